@@ -1,0 +1,190 @@
+package fit
+
+import (
+	"bytes"
+	"encoding/json"
+	"errors"
+	"fmt"
+	"io"
+	"regexp"
+)
+
+// A Recipe says how spectra are prepared and fitted. [Graphene] is the built-in one; others are JSON files of the same form.
+// All positions hold for the reference laser line; with another line, bands and windows move by their dispersion.
+type Recipe struct {
+	Name           string   `json:"name"`
+	ReferenceLaser float64  `json:"reference_laser_nm"`
+	Windows        []Window `json:"windows"`
+	Ratios         []Ratio  `json:"ratios"`
+	// SpikeThreshold is the residual, in standard deviations of its channel, above which a sharp excess is taken for a cosmic ray.
+	SpikeThreshold float64 `json:"spike_threshold"`
+	// PoorFit is the reduced chi-square of a window above which further starts are tried and the pixel is marked.
+	PoorFit float64 `json:"poor_fit"`
+}
+
+// A Window is a stretch of the spectrum that is fitted at once.
+type Window struct {
+	Name       string  `json:"name"`
+	From       float64 `json:"from_cm-1"`
+	To         float64 `json:"to_cm-1"`
+	Dispersion float64 `json:"dispersion_cm-1_per_eV"` // the window moves with the laser line
+	Background int     `json:"background_order"`       // of the polynomial under the bands: 0 constant, 1 linear ... 4
+	Bands      []Band  `json:"bands"`
+}
+
+// A Band is one line of the model.
+type Band struct {
+	Name       string  `json:"name"`
+	Shape      string  `json:"shape"` // "lorentzian"
+	Position   float64 `json:"position_cm-1"`
+	Dispersion float64 `json:"dispersion_cm-1_per_eV"`
+	Width      float64 `json:"width_cm-1"` // expected FWHM
+	// Shift is how far below (negative) and above its expected position the band may be found.
+	Shift [2]float64 `json:"shift_range_cm-1"`
+	// Widths are the narrowest and the widest FWHM allowed.
+	Widths [2]float64 `json:"width_range_cm-1"`
+	// Search tells to look for the band over its whole range rather than at its expected position: for the strong bands.
+	Search bool `json:"search"`
+	// Detect is the detection limit: height over its standard error. Below it position and width stay at what is expected, and
+	// only the height is estimated.
+	Detect float64 `json:"detection_limit"`
+}
+
+// A Ratio is a quantity made of two bands.
+type Ratio struct {
+	Name        string `json:"name"`
+	Of          string `json:"of"` // "height" or "area"
+	Numerator   string `json:"numerator"`
+	Denominator string `json:"denominator"` // the ratio is undefined where this band is not found
+}
+
+// Graphene is the built-in recipe: D, G and D' over a linear background, and 2D over another, all Lorentzian.
+//
+// Positions and dispersions: D 1341 and +50 cm-1/eV, D' 1619 and +10, 2D 2669.9 and +88 (from memory; Phys. Rev. B 61, 14095
+// (2000) and 76, 233407 (2007)); G 1581.6, not dispersive (Nat. Commun. 3, 1024 (2012)). Expected widths of weak bands: the
+// middle of the customary ranges. Detection limits: a false D or D' in one pristine pixel of 30,000, as the one-sided tail of
+// the normal distribution; G and 2D are searched for over some tens of places, hence a higher limit.
+func Graphene() Recipe {
+	return Recipe{
+		Name:           "graphene",
+		ReferenceLaser: 532,
+		Windows: []Window{
+			{Name: "d_g", From: 1200, To: 1750, Background: 1, Bands: []Band{
+				{Name: "d", Shape: "lorentzian", Position: 1341, Dispersion: 50, Width: 24,
+					Shift: [2]float64{-35, 35}, Widths: [2]float64{6, 200}, Detect: 4},
+				{Name: "g", Shape: "lorentzian", Position: 1581.6, Width: 15,
+					Shift: [2]float64{-45, 30}, Widths: [2]float64{3, 120}, Search: true, Detect: 5},
+				{Name: "dprime", Shape: "lorentzian", Position: 1619, Dispersion: 10, Width: 13,
+					Shift: [2]float64{-10, 15}, Widths: [2]float64{4, 40}, Detect: 4},
+			}},
+			{Name: "2d", From: 2550, To: 2850, Dispersion: 88, Background: 1, Bands: []Band{
+				{Name: "2d", Shape: "lorentzian", Position: 2669.9, Dispersion: 88, Width: 30,
+					Shift: [2]float64{-50, 70}, Widths: [2]float64{8, 160}, Search: true, Detect: 5},
+			}},
+		},
+		Ratios: []Ratio{
+			{Name: "d_g_ratio", Of: "height", Numerator: "d", Denominator: "g"},
+			{Name: "d_g_area_ratio", Of: "area", Numerator: "d", Denominator: "g"},
+			{Name: "2d_g_ratio", Of: "height", Numerator: "2d", Denominator: "g"},
+			{Name: "2d_g_area_ratio", Of: "area", Numerator: "2d", Denominator: "g"},
+		},
+		SpikeThreshold: 6,
+		PoorFit:        2,
+	}
+}
+
+// ReadRecipe reads a recipe from JSON. It refuses unknown fields, so that a misspelt one is not taken for the default, and
+// whatever [Recipe.Check] refuses.
+func ReadRecipe(r io.Reader) (Recipe, error) {
+	var recipe Recipe
+	data, err := io.ReadAll(io.LimitReader(r, 1<<20+1))
+	if err != nil {
+		return recipe, err
+	}
+	if len(data) > 1<<20 {
+		return recipe, errors.New("a recipe is at most 1 MiB of JSON")
+	}
+	dec := json.NewDecoder(bytes.NewReader(data))
+	dec.DisallowUnknownFields()
+	if err := dec.Decode(&recipe); err != nil {
+		line := 1 + bytes.Count(data[:min(dec.InputOffset(), int64(len(data)))], []byte("\n"))
+		return recipe, fmt.Errorf("near line %d: %w; bandgrid survey --print-recipe shows the form", line, err)
+	}
+	if dec.More() {
+		return recipe, errors.New("something follows the recipe's closing brace")
+	}
+	return recipe, recipe.Check()
+}
+
+var quantityName = regexp.MustCompile(`^[a-z0-9][a-z0-9_]{0,39}$`)
+
+// Check returns an error that names the first field that makes no sense, or nil.
+func (r Recipe) Check() error {
+	if !(r.ReferenceLaser >= 200 && r.ReferenceLaser <= 2000) {
+		return fmt.Errorf("reference_laser_nm is %g; a laser line between 200 and 2000 nm is needed", r.ReferenceLaser)
+	}
+	if !(r.SpikeThreshold >= 3) {
+		return fmt.Errorf("spike_threshold is %g; below 3 noise would be masked", r.SpikeThreshold)
+	}
+	if !(r.PoorFit >= 1) {
+		return fmt.Errorf("poor_fit is %g; it must be at least 1", r.PoorFit)
+	}
+	if len(r.Windows) == 0 {
+		return errors.New("windows: at least one is needed")
+	}
+	seen := map[string]bool{}
+	for _, w := range r.Windows {
+		if !(w.To-w.From > 0) {
+			return fmt.Errorf("window %q: from_cm-1 %g must lie below to_cm-1 %g", w.Name, w.From, w.To)
+		}
+		if w.Background < 0 || w.Background > 4 {
+			return fmt.Errorf("window %q: background_order is %d; 0 to 4 are possible", w.Name, w.Background)
+		}
+		if len(w.Bands) == 0 || len(w.Bands) > 12 {
+			return fmt.Errorf("window %q: %d bands; 1 to 12 are possible", w.Name, len(w.Bands))
+		}
+		for _, b := range w.Bands {
+			if err := b.check(w); err != nil {
+				return fmt.Errorf("window %q: band %q: %w", w.Name, b.Name, err)
+			}
+			if seen[b.Name] {
+				return fmt.Errorf("window %q: band %q is there twice", w.Name, b.Name)
+			}
+			seen[b.Name] = true
+		}
+	}
+	if len(seen) > 14 {
+		return fmt.Errorf("%d bands; a recipe may have 14", len(seen)) // status has a bit for each
+	}
+	for _, q := range r.Ratios {
+		switch {
+		case !quantityName.MatchString(q.Name):
+			return fmt.Errorf("ratio %q: a name is made of small letters, digits and underscores", q.Name)
+		case q.Of != "height" && q.Of != "area":
+			return fmt.Errorf("ratio %q: of is %q; it is \"height\" or \"area\"", q.Name, q.Of)
+		case !seen[q.Numerator] || !seen[q.Denominator]:
+			return fmt.Errorf("ratio %q: %q or %q is not a band of the recipe", q.Name, q.Numerator, q.Denominator)
+		}
+	}
+	return nil
+}
+
+func (b Band) check(w Window) error {
+	switch {
+	case !quantityName.MatchString(b.Name):
+		return errors.New("a name is made of small letters, digits and underscores")
+	case b.Shape != "lorentzian":
+		return fmt.Errorf("shape is %q; \"lorentzian\" is known", b.Shape)
+	case !(b.Position > w.From && b.Position < w.To):
+		return fmt.Errorf("position_cm-1 %g lies outside the window", b.Position)
+	case !(b.Widths[0] > 0 && b.Widths[0] < b.Widths[1]):
+		return fmt.Errorf("width_range_cm-1 is %v; two rising numbers above 0 are needed", b.Widths)
+	case !(b.Width >= b.Widths[0] && b.Width <= b.Widths[1]):
+		return fmt.Errorf("width_cm-1 %g lies outside width_range_cm-1 %v", b.Width, b.Widths)
+	case !(b.Shift[0] <= 0 && b.Shift[1] >= 0):
+		return fmt.Errorf("shift_range_cm-1 is %v; it must hold 0", b.Shift)
+	case !(b.Detect >= 1):
+		return fmt.Errorf("detection_limit is %g; at least 1 is needed", b.Detect)
+	}
+	return nil
+}

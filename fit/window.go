@@ -1,0 +1,408 @@
+package fit
+
+import (
+	"math"
+
+	"bandgrid/fit/clean"
+	"bandgrid/fit/line"
+	"bandgrid/fit/lsq"
+)
+
+// A window fits one stretch of the spectrum, in memory of its own.
+//
+// The order of work: channels without counts and obvious spikes are set aside; strong bands are located; heights and
+// background are solved for with everything else at its expected place; bands above their detection limit are set free and
+// all is refined by Levenberg-Marquardt, with weights from the fitted curve and spikes looked for in the residuals, until
+// nothing changes any more.
+type window struct {
+	*windowPlan
+	detector Detector
+	recipe   *Recipe
+	problem  *lsq.Bands
+	solver   *lsq.Solver
+	locators []*locator // per band, nil unless searched for
+
+	p, lo, hi, before []float64
+	free              []bool
+	found, barred     []bool
+	holes             []bool // channels without a usable count
+	skip, sharp       []bool // channels left out: holes and spikes; spikes that were marked before the fit
+	bridged           []float64
+	curve, sigma, r   []float64
+	scratch           []float64
+	cov               []float64
+
+	phi    float64 // variance of unit weight
+	chi2   float64 // reduced
+	points int     // channels that count
+	status Status
+	best   saved
+}
+
+// saved is a finished fit that another start may beat.
+type saved struct {
+	p, cov, sigma []float64
+	found         []bool
+	skip          []bool
+	phi, chi2     float64
+	points        int
+	status        Status
+}
+
+const (
+	maxRounds = 12
+	// settled is the change of every parameter, in standard errors, below which reweighting ends.
+	settled = 3e-3
+)
+
+func newWindow(w *windowPlan, recipe *Recipe, detector Detector) *window {
+	n, bands := len(w.x), len(w.Bands)
+	problem := lsq.NewBands(w.x, w.Background, bands)
+	params := problem.Len()
+	f := func(n int) []float64 { return make([]float64, n) }
+	b := func(n int) []bool { return make([]bool, n) }
+	win := &window{
+		windowPlan: w, detector: detector, recipe: recipe, problem: problem, solver: lsq.NewSolver(params),
+		p: f(params), lo: f(params), hi: f(params), before: f(params), free: b(params), cov: f(params * params),
+		found: b(bands), barred: b(bands), holes: b(n), skip: b(n), sharp: b(n),
+		bridged: f(n), curve: f(n), sigma: f(n), r: f(n), scratch: f(n),
+		best: saved{p: f(params), cov: f(params * params), sigma: f(n), found: b(bands), skip: b(n)},
+	}
+	for i := range win.lo {
+		win.lo[i], win.hi[i] = math.Inf(-1), math.Inf(1)
+	}
+	for k, band := range w.Bands {
+		i := problem.Band(k)
+		win.lo[i+line.Position], win.hi[i+line.Position] = max(band.Position+band.Shift[0], w.From), min(band.Position+band.Shift[1], w.To)
+		win.lo[i+line.Width], win.hi[i+line.Width] = band.Widths[0], band.Widths[1]
+		var l *locator
+		if band.Search {
+			l = newLocator(w.x, problem.Powers(), band)
+		}
+		win.locators = append(win.locators, l)
+	}
+	return win
+}
+
+// fit fits the window to a pixel's counts and reports whether there is a result: in w.p, w.cov, w.phi, w.chi2, w.found.
+func (w *window) fit(counts []float32) bool {
+	if !w.load(counts) {
+		w.status = Unfit
+		return false
+	}
+	loaded := w.status
+	w.start(0, 1)
+	w.refine()
+	if w.chi2 > w.recipe.PoorFit && w.anyFound() {
+		// The search for a start can be misled by a spike, by a neighbour, or by a width far from the profiles tried.
+		for _, try := range []struct {
+			rank  int
+			scale float64
+		}{{0, 0.45}, {0, 2.2}, {1, 1}} {
+			w.save()
+			w.status = loaded
+			w.suspect()
+			w.start(try.rank, try.scale)
+			w.refine()
+			if !(w.chi2 < w.best.chi2*0.999) {
+				w.restore()
+			}
+			w.status |= Retried
+		}
+	}
+	if w.chi2 > w.recipe.PoorFit {
+		w.status |= Poor
+	}
+	if w.spikeChannels() > 0 {
+		w.status |= Spiked
+	}
+	return true
+}
+
+// load takes over the counts and sets aside what cannot be used. It reports false where too little is left, or where the
+// counts do not scatter at all, as in a channel-less or made-up spectrum: such a fit would claim errors of zero.
+func (w *window) load(counts []float32) bool {
+	w.status = 0
+	full := math.Inf(1)
+	if w.detector.Saturation > 0 {
+		full = w.detector.Saturation
+	}
+	good := 0
+	for i, c := range w.channels {
+		v := float64(counts[c])
+		w.holes[i] = !(math.Abs(v) < math.MaxFloat32) || v >= full
+		if w.holes[i] {
+			v = 0
+		} else {
+			good++
+		}
+		w.problem.Y[i] = v
+	}
+	if good < len(w.holes) {
+		w.status |= Holes
+	}
+	return good >= 2*len(w.p) && w.suspect()
+}
+
+// suspect leaves out the holes, and the channels that look like strong spikes. It reports false where there is no noise to
+// measure by.
+func (w *window) suspect() bool {
+	copy(w.skip, w.holes)
+	w.bridge()
+	for i := range w.sigma {
+		w.sigma[i] = 1
+	}
+	noise := clean.Noise(w.problem.Y, w.sigma, w.skip, w.scratch)
+	if !(noise > 0) {
+		return false
+	}
+	if clean.Sharp(w.bridged, noise, w.skip) > 0 {
+		w.bridge()
+	}
+	for i, s := range w.skip {
+		w.sharp[i] = s && !w.holes[i]
+	}
+	return true
+}
+
+// bridge copies the counts with a straight line drawn over skipped channels. They carry no weight in the fit; the line only
+// keeps them from disturbing the search for a start.
+func (w *window) bridge() {
+	last := -1
+	for i, y := range w.problem.Y {
+		if w.skip[i] {
+			continue
+		}
+		w.bridged[i] = y
+		for k := last + 1; k < i; k++ {
+			w.bridged[k] = y
+			if last >= 0 {
+				w.bridged[k] = w.bridged[last] + (y-w.bridged[last])*float64(k-last)/float64(i-last)
+			}
+		}
+		last = i
+	}
+	for k := last + 1; k < len(w.bridged) && last >= 0; k++ {
+		w.bridged[k] = w.bridged[last]
+	}
+}
+
+// spikeChannels is the number of channels left out because of cosmic rays.
+func (w *window) spikeChannels() (n int) {
+	for i, s := range w.skip {
+		if s && !w.holes[i] {
+			n++
+		}
+	}
+	return n
+}
+
+// start puts every band at its expected place, or where it is located (rank 0 the best place, 1 the second), and solves for
+// heights and background twice: with equal weights, then with weights from the curve.
+func (w *window) start(rank int, scale float64) {
+	clear(w.found)
+	clear(w.barred)
+	clear(w.p)
+	for k := range w.Bands {
+		w.expect(k)
+		if w.locators[k] != nil {
+			at, second := w.locators[k].best(w.bridged)
+			if rank == 1 {
+				at = second
+			}
+			i := w.problem.Band(k)
+			w.p[i+line.Position], w.p[i+line.Width] = at.position, at.width*scale
+		}
+	}
+	for i := range w.sigma {
+		w.sigma[i] = 1
+	}
+	w.weigh()
+	w.minimize()
+	w.reweigh()
+	w.minimize()
+	w.judge(true)
+}
+
+func (w *window) expect(k int) {
+	i := w.problem.Band(k)
+	w.p[i+line.Position], w.p[i+line.Width] = w.Bands[k].Position, w.Bands[k].Width
+}
+
+// refine repeats fit, judgement of bands, search for spikes and reweighting until nothing changes.
+func (w *window) refine() {
+	for round := 0; ; round++ {
+		copy(w.before, w.p)
+		w.reweigh()
+		end := w.minimize()
+		changed := w.judge(false)
+		if w.spikes() {
+			changed = true
+		}
+		if last := round == maxRounds; last || !changed && w.still() {
+			if end == lsq.Converged && !last {
+				w.status |= Converged
+			} else {
+				w.status |= AtLimit
+			}
+			break
+		}
+	}
+	w.finish()
+}
+
+// minimize refines the free parameters at the present weights.
+func (w *window) minimize() lsq.End {
+	for i := range w.problem.Background() {
+		w.free[i] = true
+	}
+	for k, found := range w.found {
+		i := w.problem.Band(k)
+		w.free[i+line.Height], w.free[i+line.Position], w.free[i+line.Width] = true, found, found
+	}
+	res := w.solver.Minimize(w.problem, w.p, w.lo, w.hi, w.free, w.points, lsq.Settings{})
+	if !w.solver.Covariance(w.cov, len(w.p)) {
+		for i := range w.cov {
+			w.cov[i] = math.Inf(1)
+		}
+	}
+	w.chi2 = res.Sum / float64(max(w.points-res.Free, 1))
+	w.phi = w.chi2
+	if w.detector.Gain > 0 {
+		w.phi = max(1, w.chi2)
+	}
+	return res.End
+}
+
+// se returns the standard error of parameter i.
+func (w *window) se(i int) float64 { return math.Sqrt(w.cov[i*len(w.p)+i] * w.phi) }
+
+// judge sets free the bands that exceed their detection limit and takes back those that ran into a bound or vanished. It
+// reports whether anything changed. At the start only bands that were searched for are judged: the weak ones are tested
+// against residuals that the strong ones no longer disturb.
+func (w *window) judge(start bool) (changed bool) {
+	for k, band := range w.Bands {
+		i := w.problem.Band(k)
+		z := w.p[i] / w.se(i)
+		switch {
+		case w.found[k]:
+			bound := w.atBound(i+line.Position) || w.atBound(i+line.Width)
+			// Set free, the height has a larger error, as it trades against the width; half the limit keeps bands at the limit from
+			// flickering.
+			if !bound && z > band.Detect/2 {
+				continue
+			}
+			if bound {
+				w.status |= AtBound
+			}
+			w.found[k], w.barred[k], changed = false, true, true
+			w.expect(k)
+		case w.barred[k] || start && !band.Search:
+		case z > band.Detect:
+			w.found[k], changed = true, true
+		case band.Search && w.p[i+line.Position] != band.Position: // located in noise: back to the expected place
+			w.expect(k)
+			changed = true
+		}
+	}
+	return changed
+}
+
+func (w *window) atBound(i int) bool {
+	return w.p[i] <= w.lo[i] || w.p[i] >= w.hi[i]
+}
+
+func (w *window) anyFound() bool {
+	for _, f := range w.found {
+		if f {
+			return true
+		}
+	}
+	return false
+}
+
+// still reports whether the last round left every parameter where it was, measured in standard errors.
+func (w *window) still() bool {
+	for i, v := range w.p {
+		if w.free[i] && !(math.Abs(v-w.before[i]) <= settled*w.se(i)) {
+			return false
+		}
+	}
+	return true
+}
+
+// reweigh sets the weights from the fitted curve. Weights from the counts themselves would pull heights down, since channels
+// that happen to be low would count more (Nucl. Instrum. Methods 221, 437 (1984)).
+func (w *window) reweigh() {
+	w.problem.Curve(w.curve, w.p)
+	for i, m := range w.curve {
+		w.sigma[i] = math.Sqrt(w.detector.variance(m))
+	}
+	w.weigh()
+}
+
+func (w *window) weigh() {
+	w.points = 0
+	for i, s := range w.sigma {
+		w.problem.RootW[i] = 0
+		if !w.skip[i] {
+			w.problem.RootW[i] = 1 / s
+			w.points++
+		}
+	}
+	w.problem.SetWeights()
+}
+
+// spikes looks for cosmic rays in the residuals, and for channels that were wrongly suspected. It reports whether the set of
+// channels changed.
+func (w *window) spikes() bool {
+	w.problem.Curve(w.curve, w.p)
+	// A robust scale: the spike itself must not hide in the scatter that it makes.
+	d := w.scratch[:0]
+	for i, m := range w.curve {
+		w.r[i] = (w.problem.Y[i] - m) / w.sigma[i]
+		if !w.skip[i] {
+			d = append(d, math.Abs(w.r[i]))
+		}
+	}
+	scale := 1.4826 * clean.Median(d)
+	if !(scale > 0) {
+		return false
+	}
+	for i := range w.r {
+		w.r[i] /= scale
+	}
+	cleared := clean.Harmless(w.r, w.recipe.SpikeThreshold, w.sharp, w.skip)
+	return clean.Residual(w.r, w.recipe.SpikeThreshold, w.skip)+cleared > 0
+}
+
+// finish leaves the fit with its scale of errors.
+func (w *window) finish() {
+	if w.detector.Gain > 0 {
+		return
+	}
+	// The gain is unknown, so chi-square is measured against the scatter between neighbouring channels.
+	if noise := clean.Noise(w.problem.Y, w.sigma, w.skip, w.scratch); noise > 0 {
+		w.chi2 /= noise * noise
+	}
+}
+
+func (w *window) save() {
+	b := &w.best
+	copy(b.p, w.p)
+	copy(b.cov, w.cov)
+	copy(b.sigma, w.sigma)
+	copy(b.found, w.found)
+	copy(b.skip, w.skip)
+	b.phi, b.chi2, b.points, b.status = w.phi, w.chi2, w.points, w.status
+}
+
+func (w *window) restore() {
+	b := &w.best
+	copy(w.p, b.p)
+	copy(w.cov, b.cov)
+	copy(w.sigma, b.sigma)
+	copy(w.found, b.found)
+	copy(w.skip, b.skip)
+	w.phi, w.chi2, w.points, w.status = b.phi, b.chi2, b.points, b.status
+}
