@@ -227,6 +227,7 @@ func TestOnlyBilayer(t *testing.T) {
 			spots = append(spots, publishedSpot(r, 2, noise))
 		}
 		s := newMap(r, spots)
+		s.Settings = map[string]any{keyArea: 1.0} // of an earlier interpretation
 		number, _ := interpret(t, s, Settings{})
 		t.Logf("noise %g: one %.4f, two %.4f, undetermined %.4f", noise, share(number, 1), share(number, 2), share(number, nan32))
 		if !(share(number, 1) <= 0.002) {
@@ -261,9 +262,13 @@ func TestOnePixel(t *testing.T) {
 		{"single", spot{width: 27.5, ratio: 2.8, area: 1, noise: 0.02}, 1},
 		{"bare", spot{noise: 0.02}, 0},
 	} {
-		number, p := interpret(t, newMap(r, []spot{tt.spot}), Settings{})
+		s := newMap(r, []spot{tt.spot})
+		number, p := interpret(t, s, Settings{})
 		if number[0] != tt.want || !(p[0] >= 0.8 && p[0] <= 1) {
 			t.Errorf("%s: got %v with %v", tt.name, number[0], p[0])
+		}
+		if _, ok := s.Settings[keyArea]; ok {
+			t.Errorf("%s: the pixel is a reference to itself", tt.name)
 		}
 	}
 }
@@ -326,12 +331,13 @@ func TestEdges(t *testing.T) {
 	}
 }
 
-// Transferred film is strained and doped: its 2D is broader and lower than in the table, but all of its G areas agree.
+// Transferred film is strained and doped: its 2D is broader and lower than in the table, but its G areas agree, whether or not
+// 2D could as well be that of twisted layers.
 func TestStrainedFilm(t *testing.T) {
 	r := rand.New(rand.NewPCG(6, 5))
 	var spots []spot
 	for range 4000 {
-		spots = append(spots, spot{width: 34 + 2*r.NormFloat64(), ratio: 1.6 * math.Exp(0.2*r.NormFloat64()), area: 1 + 0.07*r.NormFloat64(), noise: 0.05})
+		spots = append(spots, spot{width: 36 + 2*r.NormFloat64(), ratio: 1.3 * math.Exp(0.2*r.NormFloat64()), area: 1 + 0.07*r.NormFloat64(), noise: 0.05})
 	}
 	for _, film := range []string{Unknown, Grown} {
 		number, _ := interpret(t, newMap(r, spots), Settings{Film: film})
@@ -382,6 +388,10 @@ func TestOneWindow(t *testing.T) {
 	number, _ = interpret(t, s, Settings{})
 	if !(share(number[:200], 1) >= 0.97) || !(share(number[200:], 0) >= 0.99) {
 		t.Errorf("without G: %.3f of the film single, %.3f of the substrate bare", share(number[:200], 1), share(number[200:], 0))
+	}
+	quarter := append(repeat(50, spot{width: 27.5, ratio: 2.8, area: 1, noise: 0.02}), spot{width: 27.5, ratio: 2.8, area: 0.25, noise: 0.02})
+	if number, p := interpret(t, without(newMap(r, quarter), "g_", "d_"), Settings{}); number[50] == number[50] {
+		t.Errorf("without G: a spot covered by a quarter is %v with %v", number[50], p[50])
 	}
 	if !warned(s, "no G window") {
 		t.Errorf("without G: warnings %q", s.Warnings)
@@ -441,6 +451,46 @@ func TestOrder(t *testing.T) {
 	}
 }
 
+// The broadening of the instrument is not taken for a further layer.
+func TestInstrumentWidth(t *testing.T) {
+	e := Settings{InstrumentWidth: 12}.expect(532)
+	// The sum of a Lorentzian's and a Gaussian's width is above that of their Voigt profile, and the larger of them below it.
+	for n := 1; n < classes; n++ {
+		if w, got := widths2D[n-1].centre, e.width[n].centre; !(got > w && got < w+12) {
+			t.Errorf("%d layers: %.2f seen by an instrument of 12, %.2f without", n, got, w)
+		}
+	}
+	r := rand.New(rand.NewPCG(8, 7))
+	s := newMap(r, []spot{{width: 36, ratio: 1.5, area: 1, noise: 0.01}})
+	_, sharp := interpret(t, s, Settings{Film: Grown})
+	_, broad := interpret(t, s, Settings{Film: Grown, InstrumentWidth: 12})
+	if !(broad[0] > sharp[0]) {
+		t.Errorf("probability of one layer %v with a broad instrument, %v with a sharp one", broad[0], sharp[0])
+	}
+}
+
+// Damage leaves the G area to decide, and makes it less sure.
+func TestDamageAndArea(t *testing.T) {
+	e := Settings{}.expect(532)
+	px := pixel{area: 1.2, areaSE: 0.02}
+	var pristine, damaged [hypotheses]float64
+	e.amount(&pristine, &px, 1)
+	e.amount(&damaged, &px, 0)
+	if a, b := pristine[1]-pristine[2], damaged[1]-damaged[2]; !(b > 0 && b < a) {
+		t.Errorf("log likelihood ratio of one to two layers: %.2f damaged, %.2f pristine", b, a)
+	}
+}
+
+func TestDamage(t *testing.T) {
+	for _, tt := range []struct{ dg, widthG, least, most float64 }{
+		{0, 14, 0, 0}, {0.02, 16, 0, 0}, {1.5, 25, 1, 1}, {0.05, 60, 1, 1}, {0.5, 20, 0.1, 0.9}, {math.NaN(), 14, 0, 0}, {1, math.NaN(), 0, 0},
+	} {
+		if got := damage(&pixel{dg: tt.dg, widthG: tt.widthG}); !(got >= tt.least && got <= tt.most) {
+			t.Errorf("D/G %g, G width %g: %g, want %g to %g", tt.dg, tt.widthG, got, tt.least, tt.most)
+		}
+	}
+}
+
 func TestSettings(t *testing.T) {
 	nan := math.NaN()
 	for _, set := range []Settings{
@@ -457,6 +507,24 @@ func TestSettings(t *testing.T) {
 	}
 	if err := (Settings{}).Check(); err != nil {
 		t.Error(err)
+	}
+}
+
+// A level needs pixels that agree on it.
+func TestTwin(t *testing.T) {
+	r := rand.New(rand.NewPCG(6, 6))
+	one, two := spot{width: 28, ratio: 2.8, area: 1, noise: 0.01}, spot{width: 28, ratio: 2.8, area: 1.87, noise: 0.01}
+	for _, tt := range []struct {
+		ones int
+		want float64
+	}{{leastPixels - 2, 1.87}, {leastPixels + 2, 1}} {
+		s := newMap(r, append(repeat(tt.ones, one), repeat(30, two)...))
+		interpret(t, s, Settings{Film: Grown})
+		got, _ := s.Settings[keyArea].(float64)
+		// 1 % of noise on a few pixels
+		if got /= math.Pi / 2 * 14 * oneLayer; !(math.Abs(got/tt.want-1) <= 0.02) {
+			t.Errorf("%d pixels at half the area: level %.3f, want %.3f", tt.ones, got, tt.want)
+		}
 	}
 }
 

@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"bandgrid/fit"
+	"bandgrid/fit/lsq"
 )
 
 // published reads a table of testdata/published, a row per map from column to text.
@@ -128,6 +129,71 @@ func TestAreaGrows(t *testing.T) {
 		if !(e.areaTop > e.area[fivePlus] && e.areaBulk < e.areaTop) {
 			t.Errorf("oxide %g: G of five layers %.2f, at most %.2f, of bulk %.2f", set.Oxide, e.area[fivePlus], e.areaTop, e.areaBulk)
 		}
+	}
+}
+
+// In the expectation 2D/G follows the oxide as interference does.
+func TestRatioFollowsOxide(t *testing.T) {
+	optical := map[string]float64{} // 2D/G by oxide
+	for _, row := range published(t, "interference.csv") {
+		if row["laser_nm"] != "532" {
+			continue
+		}
+		if i := number(t, row, "enhancement"); row["band"] == "g" {
+			optical[row["oxide_nm"]] = 1 / i
+		} else if row["band"] == "2d" {
+			optical[row["oxide_nm"]] *= i
+		}
+	}
+	for _, oxide := range []string{"90", "285"} {
+		nm, err := strconv.ParseFloat(oxide, 64)
+		if err != nil {
+			t.Fatal(err)
+		}
+		got := Settings{Oxide: nm}.expect(532).ratio[1] - Settings{Oxide: 300}.expect(532).ratio[1]
+		// As in TestInterference, for two bands.
+		if want := math.Log(optical[oxide] / optical["300"]); !(math.Abs(got-want) <= 1e-2) {
+			t.Errorf("%s nm oxide: ln 2D/G changes by %.4f from 300 nm, want %.4f", oxide, got, want)
+		}
+	}
+}
+
+// The four components of two layers have the published width when one Lorentzian is fitted to them over a linear background.
+// Heights are given with two digits: a change of the last one moves the width by up to 0.3 cm-1.
+func TestBilayerComponents(t *testing.T) {
+	var x []float64
+	for v := 2550.0; v <= 2850; v++ {
+		x = append(x, v)
+	}
+	problem := lsq.NewBands(x, 1, 1)
+	for i := range x {
+		problem.RootW[i] = 1
+	}
+	problem.SetWeights()
+	seen := 0
+	for _, row := range published(t, "bilayer_components.csv") {
+		if row["laser_nm"] != "514.5" {
+			continue
+		}
+		seen++
+		at := 2690 + number(t, row, "offset_cm-1")
+		for i, v := range x {
+			u := (v - at) / (number(t, row, "width_cm-1") / 2)
+			problem.Y[i] += 1000 * number(t, row, "height") / (1 + u*u)
+		}
+	}
+	if seen != 4 {
+		t.Fatalf("%d components", seen)
+	}
+	p := []float64{0, 0, 1500, 2692, 45}
+	n := len(p)
+	low, high, free := make([]float64, n), make([]float64, n), make([]bool, n)
+	for i := range p {
+		low[i], high[i], free[i] = math.Inf(-1), math.Inf(1), true
+	}
+	lsq.NewSolver(n).Minimize(problem, p, low, high, free, len(x), lsq.Settings{})
+	if got, want := p[4], widths2D[1].centre; !(math.Abs(got-want) <= 0.3) {
+		t.Errorf("one Lorentzian is %.2f wide, published %.2f", got, want)
 	}
 }
 
