@@ -64,6 +64,11 @@ func (set Settings) Check() error {
 // layer_number is 0 for bare substrate, 1 to 4, 5 for five or more, and NaN where it is undetermined. layer_probability is that
 // of the most probable of these, also where it is too low to decide, and NaN where a pixel has no data or where no layer
 // number fits what is seen.
+//
+// At an edge the layer number is that of the film under more than half of the spot; with less than half, but more than a stray
+// part, it is undetermined. That needs the G level of a single layer. A spot that is half on three layers and half on bare
+// substrate can pass for two layers, since it has their G area and nearly their 2D width. Damaged film (high D/G, broad G) is
+// undetermined unless the G area decides.
 func Steps(set Settings) []fit.Step {
 	return []fit.Step{
 		{

@@ -44,7 +44,7 @@ func (e *expectation) judge(px *pixel, v *verdict) {
 	known := px.area == px.area || px.height2D == px.height2D // a level is known
 	switch {
 	case px.foundG || px.found2D:
-		if px.foundG && px.window2D && !px.found2D && e.lost2D(px) {
+		if lost2D(px) {
 			return
 		}
 		trust := 1 - damage(px)
@@ -197,8 +197,8 @@ func (e *expectation) absence(l *[hypotheses]float64, px *pixel) {
 
 // lost2D tells whether a film with a G band lacks a 2D band that any graphene would show at this noise, as amorphous carbon,
 // resist and heavily damaged film do. Graphite has at least 0.3 of G (common practice); half of that counts.
-func (e *expectation) lost2D(px *pixel) bool {
-	return px.ratio+2*px.ratioSE < 0.15
+func lost2D(px *pixel) bool {
+	return px.foundG && px.window2D && !px.found2D && px.ratio+2*px.ratioSE < 0.15
 }
 
 // damage says how far disorder spoils the evidence of 2D: 0 not at all, 1 fully. Disorder broadens 2D and lowers 2D/G as more

@@ -510,6 +510,21 @@ func TestSettings(t *testing.T) {
 	}
 }
 
+// A stack passes for one layer only where all of its layers are twisted, so the more layers, the less often.
+func TestTwistedShare(t *testing.T) {
+	for _, film := range []string{Exfoliated, Unknown, Grown} {
+		e := Settings{Film: film}.expect(532)
+		if e.twisted[1] != 0 || e.twisted[2] != twistedShare[film] {
+			t.Errorf("film %s: %v", film, e.twisted)
+		}
+		for n := 3; n < classes; n++ {
+			if want := e.twisted[n-1] * e.twisted[2]; !(math.Abs(e.twisted[n]/want-1) <= 1e-12) {
+				t.Errorf("film %s, %d layers: %g, want %g", film, n, e.twisted[n], want)
+			}
+		}
+	}
+}
+
 // A level needs pixels that agree on it.
 func TestTwin(t *testing.T) {
 	r := rand.New(rand.NewPCG(6, 6))
