@@ -1,0 +1,469 @@
+package lsq
+
+import (
+	"math"
+)
+
+// Squares is any nonlinear least-squares problem: make Σ r(p)² small. A weight w enters as a factor √w of its residual.
+// Parameters that are tied to each other are a [Linear]'s business.
+type Squares struct {
+	Rows   int // residuals
+	Params int
+	// Residuals stores r(p) in r. It keeps and changes neither slice's backing otherwise. A residual that is NaN or infinite
+	// says that p is outside the model's domain: the search turns back.
+	Residuals func(r, p []float64)
+	// Jacobian stores ∂r_i/∂p_j in j, row-major Rows by Params. Where it is nil, derivatives are taken numerically, see
+	// [Derivatives]; that costs some 20 evaluations per parameter.
+	Jacobian func(j, p []float64)
+	// Lower and Upper bound the parameters; nil means none, as do -Inf and +Inf. Residuals is never asked outside them.
+	Lower, Upper []float64
+}
+
+// Ends that only [General] has.
+const (
+	NotFinite End = 16 + iota // residuals or derivatives at the start are NaN or infinite: parameters as given
+)
+
+// GeneralSettings steer [General]; the zero value works.
+type GeneralSettings struct {
+	// Tolerance is the length of the remaining step, in standard errors, below which the search ends; default 1e-9. It is
+	// free of the units of parameters and residuals.
+	Tolerance float64
+	// Limit is the largest number of trial steps; default 5000.
+	Limit int
+	// Reach is the length of the first step relative to the parameters, both measured by their effect on the residuals;
+	// default 1. Starts that are known to be good may use more.
+	Reach float64
+}
+
+// GeneralResult is the outcome of a minimisation by [General].
+type GeneralResult struct {
+	Result          // Free leaves out parameters that end at a bound
+	Evaluations int // calls of Residuals, without those of numerical derivatives
+	Jacobians   int
+	Rank        int     // independent directions among the free parameters at the end
+	Remaining   float64 // length of the step that remains, in standard errors; NaN where the start was not finite
+
+	rounded bool // converged as far as rounding allows
+}
+
+// Reason says in words how the search ended.
+func (r GeneralResult) Reason() string {
+	switch {
+	case r.rounded && r.End == Converged:
+		return "converged as far as rounding allows"
+	}
+	switch r.End {
+	case NotFinite:
+		return "residuals or derivatives at the start are not finite"
+	case Singular:
+		return "the data do not determine all parameters"
+	}
+	return r.End.String()
+}
+
+// General minimises [Squares] problems up to the size that it was made for. It trades speed for generality: QR factors of the
+// Jacobian itself rather than normal equations, so that parameters come out right where the columns are almost dependent. Its
+// memory is its own: an iteration with analytic derivatives allocates nothing. Not safe for concurrent use.
+type General struct {
+	rows, params int
+	r, trial     []float64 // residuals here and at the trial point
+	jac, jac2    []float64 // Jacobian here and at the trial point, row-major
+	rhs          []float64 // residuals plus the effect of clipped steps
+	scale        []float64 // largest column norm so far
+	q            []float64 // trial point
+	step         []float64
+	z, inv       []float64
+	state        []uint8 // of each parameter
+	free         []int   // parameters that move
+	qr           *qr
+	derivatives  *Derivatives
+	last         Squares
+}
+
+const (
+	moves   uint8 = iota
+	held          // at a bound, the gradient pushes outwards
+	clipped       // its step ends at a bound
+)
+
+// NewGeneral returns a solver for up to that many residuals and parameters.
+func NewGeneral(rows, params int) *General {
+	v := func(n int) []float64 { return make([]float64, n) }
+	return &General{
+		r: v(rows), trial: v(rows), jac: v(rows * params), jac2: v(rows * params), rhs: v(rows), scale: v(params),
+		q: v(params), step: v(params), z: v(params), inv: v(params * params), state: make([]uint8, params), free: make([]int, 0, params),
+		qr: newQR(rows, params),
+	}
+}
+
+// Minimize moves p to a local minimum of the problem. The start is first put inside the bounds. It panics where slices do not
+// have the problem's size, or the problem not the solver's.
+//
+// Method: Levenberg-Marquardt, J. Soc. Ind. Appl. Math. 11, 431 (1963), https://doi.org/10.1137/0111030, in the trust-region
+// form of Numerical Analysis, Lect. Notes Math. 630, 105 (1978) [from memory]: each step minimises the linear model within a
+// radius, lengths of parameters being scaled by the largest column norms so far. A parameter at a bound is held while the
+// gradient pushes it outwards; one whose step would cross a bound stops there, and the others are solved again.
+//
+// The search has converged when the step that remains is shorter than the tolerance in standard errors (the measure is the
+// part of the residuals in the span of the Jacobian over the rest, Technometrics 23, 179 (1981) [from memory]), or when that
+// part is no more than the rounding of the residuals.
+func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralResult {
+	s.check(f, p)
+	s.last = f
+	tol, limit, reach := set.Tolerance, set.Limit, set.Reach
+	if tol == 0 {
+		tol = 1e-9
+	}
+	if limit == 0 {
+		limit = 5000
+	}
+	if reach == 0 {
+		reach = 1
+	}
+	s.rows, s.params = f.Rows, f.Params
+	res := GeneralResult{Result: Result{Sum: math.NaN(), End: AtLimit}, Remaining: math.NaN()}
+	for j := range p {
+		p[j] = min(max(p[j], f.lower(j)), f.upper(j))
+	}
+	f.Residuals(s.r[:f.Rows], p)
+	res.Evaluations = 1
+	res.Sum = squares(s.r[:f.Rows])
+	if !finite(res.Sum) || !allFinite(p) || !s.jacobian(s.jac, p, &res) {
+		res.End = NotFinite
+		return res
+	}
+	clear(s.scale)
+	s.rescale()
+	radius := reach * s.size(p)
+	if radius == 0 {
+		radius = reach * math.Sqrt(res.Sum)
+	}
+	const faint = 1e-9 // fall of the sum, relative, below which rounding hides whether a step is good
+	polish, polished, before := true, false, 0.0
+	for {
+		s.hold(f, p)
+		s.factor(s.r[:f.Rows])
+		remaining := s.remaining(&res)
+		if polished && !(remaining < before) { // no better: back to where the sum can judge
+			s.swap(p)
+			res.Sum = squares(s.r[:f.Rows])
+			polish, polished = false, false
+			continue
+		}
+		polished = false
+		if rounding := s.rounding(p); remaining <= tol || s.qr.head() <= rounding {
+			res.rounded = remaining > tol
+			return s.converged(res)
+		}
+		for {
+			if res.Iterations >= limit {
+				return res
+			}
+			res.Iterations++
+			length, damping := s.bounded(f, p, radius)
+			fall := s.predicted()
+			f.Residuals(s.trial[:f.Rows], s.q)
+			res.Evaluations++
+			actual := difference(s.r[:f.Rows], s.trial[:f.Rows])
+			ratio := -1.0
+			switch {
+			case !(fall > 0) || !finite(actual):
+			case polish && damping == 0 && fall <= faint*res.Sum && math.Abs(actual) <= faint*res.Sum:
+				ratio, polished, before = 1, true, remaining
+			default:
+				ratio = actual / fall
+			}
+			accepted := ratio > 1e-4 && s.jacobian(s.jac2, s.q, &res)
+			if !accepted {
+				ratio = min(ratio, 0) // also where derivatives do not exist
+			}
+			switch {
+			case ratio < 0.25:
+				radius = 0.25 * min(radius, length)
+			case damping == 0 || ratio > 0.75:
+				radius = max(radius, 2*length)
+			}
+			if accepted {
+				break
+			}
+			if fall <= 4*(math.Sqrt(res.Sum)*s.rounding(p)+epsilon*res.Sum) {
+				res.rounded = true
+				return s.converged(res)
+			}
+			if !(radius > epsilon*s.size(p)) {
+				res.End = Stalled
+				return res
+			}
+		}
+		s.swap(p)
+		res.Sum = squares(s.r[:f.Rows])
+		s.rescale()
+	}
+}
+
+// converged names the end where no step is left.
+func (s *General) converged(res GeneralResult) GeneralResult {
+	res.End = Converged
+	if s.qr.rank < s.qr.n {
+		res.End = Singular
+	}
+	return res
+}
+
+// swap exchanges the point and the trial point, with residuals and derivatives.
+func (s *General) swap(p []float64) {
+	for j := range p {
+		p[j], s.q[j] = s.q[j], p[j]
+	}
+	s.r, s.trial = s.trial, s.r
+	s.jac, s.jac2 = s.jac2, s.jac
+}
+
+// remaining is the length of the step that remains, in standard errors: the factors are those of the point.
+func (s *General) remaining(res *GeneralResult) float64 {
+	res.Free, res.Rank = s.qr.n, s.qr.rank
+	res.Remaining = 0
+	if span := s.qr.head(); span > 0 {
+		res.Remaining = span / math.Sqrt(res.Sum/float64(max(s.rows-s.qr.rank, 1)))
+	}
+	return res.Remaining
+}
+
+// check panics where sizes do not fit: a caller's bug.
+func (s *General) check(f Squares, p []float64) {
+	switch {
+	case len(p) != f.Params || f.Lower != nil && len(f.Lower) != f.Params || f.Upper != nil && len(f.Upper) != f.Params:
+		panic("lsq: parameters or bounds not of the problem's length")
+	case f.Rows > len(s.r) || f.Params > len(s.scale):
+		panic("lsq: problem larger than its solver")
+	}
+	for j := range p {
+		if !(f.lower(j) <= f.upper(j)) {
+			panic("lsq: lower bound above upper bound")
+		}
+	}
+}
+
+func (f *Squares) lower(j int) float64 {
+	if f.Lower == nil {
+		return math.Inf(-1)
+	}
+	return f.Lower[j]
+}
+
+func (f *Squares) upper(j int) float64 {
+	if f.Upper == nil {
+		return math.Inf(1)
+	}
+	return f.Upper[j]
+}
+
+// jacobian stores the derivatives at p and reports whether all are finite.
+func (s *General) jacobian(jac, p []float64, res *GeneralResult) bool {
+	jac = jac[:s.rows*s.params]
+	res.Jacobians++
+	if s.last.Jacobian != nil {
+		s.last.Jacobian(jac, p)
+	} else {
+		if s.derivatives == nil {
+			s.derivatives = NewDerivatives(len(s.r), len(s.scale))
+		}
+		s.derivatives.Jacobian(jac, s.last, p)
+	}
+	return allFinite(jac)
+}
+
+// rescale lets the scale of each parameter grow to its column's norm. That it never falls keeps a parameter without influence
+// in one corner of the valley from running away.
+func (s *General) rescale() {
+	for j := range s.params {
+		t := 0.0
+		for i := j; i < s.rows*s.params; i += s.params {
+			t = math.Hypot(t, s.jac[i])
+		}
+		s.scale[j] = max(s.scale[j], t)
+	}
+}
+
+// scaleOf is the scale of parameter j; one that never had influence has scale 1.
+func (s *General) scaleOf(j int) float64 {
+	if s.scale[j] == 0 {
+		return 1
+	}
+	return s.scale[j]
+}
+
+// size is the scaled length of p.
+func (s *General) size(p []float64) float64 {
+	t := 0.0
+	for j, v := range p {
+		t = math.Hypot(t, s.scaleOf(j)*v)
+	}
+	return t
+}
+
+// rounding is what rounding the parameters to double precision does to the residuals: no search can see less.
+func (s *General) rounding(p []float64) float64 {
+	t := 0.0
+	for j := range s.params {
+		c := 0.0
+		for i := j; i < s.rows*s.params; i += s.params {
+			c = math.Hypot(c, s.jac[i])
+		}
+		t += c * math.Abs(p[j])
+	}
+	return epsilon / 2 * t
+}
+
+// hold finds the parameters that a bound holds.
+func (s *General) hold(f Squares, p []float64) {
+	for j, v := range p {
+		s.state[j] = moves
+		lower, upper := v <= f.lower(j), v >= f.upper(j)
+		if !lower && !upper {
+			continue
+		}
+		g := 0.0
+		for i, r := range s.r[:s.rows] {
+			g += s.jac[i*s.params+j] * r
+		}
+		if lower && upper || lower && g > 0 || upper && g < 0 {
+			s.state[j] = held
+		}
+	}
+}
+
+// factor takes the scaled columns of the parameters that move, and the right-hand side b.
+func (s *General) factor(b []float64) {
+	s.free = s.free[:0]
+	for j := range s.params {
+		if s.state[j] == moves {
+			s.free = append(s.free, j)
+		}
+	}
+	n := len(s.free)
+	for k, j := range s.free {
+		d := s.scaleOf(j)
+		for i := range s.rows {
+			s.qr.a[i*n+k] = s.jac[i*s.params+j] / d
+		}
+	}
+	clear(s.qr.a[s.rows*n : s.qr.rows*n])
+	copy(s.qr.b, b)
+	clear(s.qr.b[s.rows:])
+	s.qr.factor(n)
+}
+
+// bounded stores the step for this radius in s.step and the trial point in s.q, and returns the step's scaled length and the
+// damping. The factors of the parameters that move are there already, for the first pass.
+func (s *General) bounded(f Squares, p []float64, radius float64) (length, damping float64) {
+	clear(s.step)
+	copy(s.q, p)
+	copy(s.rhs, s.r[:s.rows])
+	again := false
+	for {
+		if again {
+			s.factor(s.rhs)
+		}
+		z := s.z[:s.qr.n]
+		damping = s.qr.within(z, radius)
+		crossed := false
+		for k, place := range s.qr.pivot[:s.qr.n] {
+			j := s.free[place]
+			s.step[j] = z[k] / s.scaleOf(j)
+			s.q[j] = p[j] + s.step[j]
+			if bound := min(max(s.q[j], f.lower(j)), f.upper(j)); bound != s.q[j] {
+				s.q[j], s.step[j] = bound, bound-p[j]
+				s.state[j] = clipped
+				crossed = true
+				for i := range s.rows {
+					s.rhs[i] += s.jac[i*s.params+j] * s.step[j]
+				}
+			}
+		}
+		if !crossed {
+			break
+		}
+		again = true
+	}
+	if again { // the next radius starts from all parameters that are not held
+		for j, state := range s.state[:s.params] {
+			if state == clipped {
+				s.state[j] = moves
+			}
+		}
+		s.factor(s.r[:s.rows])
+	}
+	for j, v := range s.step[:s.params] {
+		length = math.Hypot(length, s.scaleOf(j)*v)
+	}
+	return length, damping
+}
+
+// predicted is the fall of the sum of squares for the step by the linear model.
+func (s *General) predicted() float64 {
+	fall := 0.0
+	for i, v := range s.r[:s.rows] {
+		d := 0.0
+		for j, t := range s.step[:s.params] {
+			d += s.jac[i*s.params+j] * t
+		}
+		fall -= d * (2*v + d)
+	}
+	return fall
+}
+
+// difference is the sum of squares of a less that of b, without the cancellation of two large sums.
+func difference(a, b []float64) float64 {
+	t := 0.0
+	for i, v := range a {
+		t += (v - b[i]) * (v + b[i])
+	}
+	return t
+}
+
+func squares(r []float64) float64 {
+	t := 0.0
+	for _, v := range r {
+		t += v * v
+	}
+	return t
+}
+
+func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
+
+func allFinite(v []float64) bool {
+	for _, x := range v {
+		if !finite(x) {
+			return false
+		}
+	}
+	return true
+}
+
+// Covariance stores in cov, row-major Params by Params of the last Minimize, the inverse of J'J at its end; rows and columns
+// of parameters that are held at a bound are zero. Multiply by the variance of a residual, 1 where the residuals are in units
+// of their standard deviation, else Sum over the number of residuals less Free. Where the data do not determine all parameters
+// it stores NaN and reports false.
+func (s *General) Covariance(cov []float64) bool {
+	n := s.params
+	cov = cov[:n*n]
+	s.factor(s.r[:s.rows])
+	if s.qr.rank < s.qr.n {
+		for i := range cov {
+			cov[i] = math.NaN()
+		}
+		return false
+	}
+	clear(cov)
+	m := s.qr.n
+	inv := s.inv[:m*m]
+	s.qr.inverse(inv)
+	for a, i := range s.free {
+		for b, j := range s.free {
+			cov[i*n+j] = inv[a*m+b] / s.scaleOf(i) / s.scaleOf(j)
+		}
+	}
+	return true
+}
