@@ -121,14 +121,14 @@ func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralR
 	if reach == 0 {
 		reach = 1
 	}
-	s.rows, s.params = f.Rows, f.Params
+	s.resize(f.Rows, f.Params)
 	res := GeneralResult{Result: Result{Sum: math.NaN(), End: AtLimit}, Remaining: math.NaN()}
 	for j := range p {
 		p[j] = min(max(p[j], f.lower(j)), f.upper(j))
 	}
-	f.Residuals(s.r[:f.Rows], p)
+	f.Residuals(s.r, p)
 	res.Evaluations = 1
-	res.Sum = squares(s.r[:f.Rows])
+	res.Sum = squares(s.r)
 	if !finite(res.Sum) || !allFinite(p) || !s.jacobian(s.jac, p, &res) {
 		res.End = NotFinite
 		return res
@@ -143,11 +143,11 @@ func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralR
 	polish, polished, before := true, false, 0.0
 	for {
 		s.hold(f, p)
-		s.factor(s.r[:f.Rows])
+		s.factor(s.r)
 		remaining := s.remaining(&res)
 		if polished && !(remaining < before) { // no better: back to where the sum can judge
 			s.swap(p)
-			res.Sum = squares(s.r[:f.Rows])
+			res.Sum = squares(s.r)
 			polish, polished = false, false
 			continue
 		}
@@ -163,9 +163,9 @@ func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralR
 			res.Iterations++
 			length, damping := s.bounded(f, p, radius)
 			fall := s.predicted()
-			f.Residuals(s.trial[:f.Rows], s.q)
+			f.Residuals(s.trial, s.q)
 			res.Evaluations++
-			actual := difference(s.r[:f.Rows], s.trial[:f.Rows])
+			actual := difference(s.r, s.trial)
 			ratio := -1.0
 			switch {
 			case !(fall > 0) || !finite(actual):
@@ -187,7 +187,7 @@ func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralR
 			if accepted {
 				break
 			}
-			if fall <= 4*(math.Sqrt(res.Sum)*s.rounding(p)+epsilon*res.Sum) {
+			if head := s.qr.head(); head*head <= 4*(math.Sqrt(res.Sum)*s.rounding(p)+epsilon*res.Sum) {
 				res.rounded = true
 				return s.converged(res)
 			}
@@ -197,7 +197,7 @@ func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralR
 			}
 		}
 		s.swap(p)
-		res.Sum = squares(s.r[:f.Rows])
+		res.Sum = squares(s.r)
 		s.rescale()
 	}
 }
@@ -235,7 +235,7 @@ func (s *General) check(f Squares, p []float64) {
 	switch {
 	case len(p) != f.Params || f.Lower != nil && len(f.Lower) != f.Params || f.Upper != nil && len(f.Upper) != f.Params:
 		panic("lsq: parameters or bounds not of the problem's length")
-	case f.Rows > len(s.r) || f.Params > len(s.scale):
+	case f.Rows > cap(s.r) || f.Params > cap(s.scale):
 		panic("lsq: problem larger than its solver")
 	}
 	for j := range p {
@@ -243,6 +243,14 @@ func (s *General) check(f Squares, p []float64) {
 			panic("lsq: lower bound above upper bound")
 		}
 	}
+}
+
+// resize cuts the memory to the problem's size.
+func (s *General) resize(rows, params int) {
+	s.rows, s.params = rows, params
+	s.r, s.trial, s.rhs = s.r[:rows], s.trial[:rows], s.rhs[:rows]
+	s.jac, s.jac2 = s.jac[:rows*params], s.jac2[:rows*params]
+	s.scale, s.q, s.step, s.state = s.scale[:params], s.q[:params], s.step[:params], s.state[:params]
 }
 
 func (f *Squares) lower(j int) float64 {
@@ -261,157 +269,16 @@ func (f *Squares) upper(j int) float64 {
 
 // jacobian stores the derivatives at p and reports whether all are finite.
 func (s *General) jacobian(jac, p []float64, res *GeneralResult) bool {
-	jac = jac[:s.rows*s.params]
 	res.Jacobians++
 	if s.last.Jacobian != nil {
 		s.last.Jacobian(jac, p)
 	} else {
 		if s.derivatives == nil {
-			s.derivatives = NewDerivatives(len(s.r), len(s.scale))
+			s.derivatives = NewDerivatives(cap(s.r), cap(s.scale))
 		}
 		s.derivatives.Jacobian(jac, s.last, p)
 	}
 	return allFinite(jac)
-}
-
-// rescale lets the scale of each parameter grow to its column's norm. That it never falls keeps a parameter without influence
-// in one corner of the valley from running away.
-func (s *General) rescale() {
-	for j := range s.params {
-		t := 0.0
-		for i := j; i < s.rows*s.params; i += s.params {
-			t = math.Hypot(t, s.jac[i])
-		}
-		s.scale[j] = max(s.scale[j], t)
-	}
-}
-
-// scaleOf is the scale of parameter j; one that never had influence has scale 1.
-func (s *General) scaleOf(j int) float64 {
-	if s.scale[j] == 0 {
-		return 1
-	}
-	return s.scale[j]
-}
-
-// size is the scaled length of p.
-func (s *General) size(p []float64) float64 {
-	t := 0.0
-	for j, v := range p {
-		t = math.Hypot(t, s.scaleOf(j)*v)
-	}
-	return t
-}
-
-// rounding is what rounding the parameters to double precision does to the residuals: no search can see less.
-func (s *General) rounding(p []float64) float64 {
-	t := 0.0
-	for j := range s.params {
-		c := 0.0
-		for i := j; i < s.rows*s.params; i += s.params {
-			c = math.Hypot(c, s.jac[i])
-		}
-		t += c * math.Abs(p[j])
-	}
-	return epsilon / 2 * t
-}
-
-// hold finds the parameters that a bound holds.
-func (s *General) hold(f Squares, p []float64) {
-	for j, v := range p {
-		s.state[j] = moves
-		lower, upper := v <= f.lower(j), v >= f.upper(j)
-		if !lower && !upper {
-			continue
-		}
-		g := 0.0
-		for i, r := range s.r[:s.rows] {
-			g += s.jac[i*s.params+j] * r
-		}
-		if lower && upper || lower && g > 0 || upper && g < 0 {
-			s.state[j] = held
-		}
-	}
-}
-
-// factor takes the scaled columns of the parameters that move, and the right-hand side b.
-func (s *General) factor(b []float64) {
-	s.free = s.free[:0]
-	for j := range s.params {
-		if s.state[j] == moves {
-			s.free = append(s.free, j)
-		}
-	}
-	n := len(s.free)
-	for k, j := range s.free {
-		d := s.scaleOf(j)
-		for i := range s.rows {
-			s.qr.a[i*n+k] = s.jac[i*s.params+j] / d
-		}
-	}
-	clear(s.qr.a[s.rows*n : s.qr.rows*n])
-	copy(s.qr.b, b)
-	clear(s.qr.b[s.rows:])
-	s.qr.factor(n)
-}
-
-// bounded stores the step for this radius in s.step and the trial point in s.q, and returns the step's scaled length and the
-// damping. The factors of the parameters that move are there already, for the first pass.
-func (s *General) bounded(f Squares, p []float64, radius float64) (length, damping float64) {
-	clear(s.step)
-	copy(s.q, p)
-	copy(s.rhs, s.r[:s.rows])
-	again := false
-	for {
-		if again {
-			s.factor(s.rhs)
-		}
-		z := s.z[:s.qr.n]
-		damping = s.qr.within(z, radius)
-		crossed := false
-		for k, place := range s.qr.pivot[:s.qr.n] {
-			j := s.free[place]
-			s.step[j] = z[k] / s.scaleOf(j)
-			s.q[j] = p[j] + s.step[j]
-			if bound := min(max(s.q[j], f.lower(j)), f.upper(j)); bound != s.q[j] {
-				s.q[j], s.step[j] = bound, bound-p[j]
-				s.state[j] = clipped
-				crossed = true
-				for i := range s.rows {
-					s.rhs[i] += s.jac[i*s.params+j] * s.step[j]
-				}
-			}
-		}
-		if !crossed {
-			break
-		}
-		again = true
-	}
-	if again { // the next radius starts from all parameters that are not held
-		for j, state := range s.state[:s.params] {
-			if state == clipped {
-				s.state[j] = moves
-			}
-		}
-		s.factor(s.r[:s.rows])
-	}
-	for j, v := range s.step[:s.params] {
-		length = math.Hypot(length, s.scaleOf(j)*v)
-	}
-	return length, damping
-}
-
-// predicted is the fall of the sum of squares for the step by the linear model.
-func (s *General) predicted() float64 {
-	fall := 0.0
-	for i, v := range s.r[:s.rows] {
-		d := 0.0
-		for j, t := range s.step[:s.params] {
-			d += s.jac[i*s.params+j] * t
-		}
-		fall -= d * (2*v + d)
-	}
-	return fall
 }
 
 // difference is the sum of squares of a less that of b, without the cancellation of two large sums.
@@ -449,7 +316,7 @@ func allFinite(v []float64) bool {
 func (s *General) Covariance(cov []float64) bool {
 	n := s.params
 	cov = cov[:n*n]
-	s.factor(s.r[:s.rows])
+	s.factor(s.r)
 	if s.qr.rank < s.qr.n {
 		for i := range cov {
 			cov[i] = math.NaN()
