@@ -29,16 +29,21 @@ type GeneralSettings struct {
 	// Tolerance is the length of the remaining step, in standard errors, below which the search ends; default 1e-9. It is
 	// free of the units of parameters and residuals.
 	Tolerance float64
-	// Limit is the largest number of trial steps; default 5000.
+	// Limit is the largest number of trial steps of one search; default 500.
 	Limit int
-	// Reach is the length of the first step relative to the parameters, both measured by their effect on the residuals;
-	// default 1. Starts that are known to be good may use more.
+	// Reach is the largest length of the first step relative to the parameters, both measured by their effect on the
+	// residuals; default 10. Common practice is from 0.1, for starts far off, to 100.
 	Reach float64
+	// Searches is the largest number of searches from the start; default 3. One that does not converge is followed by
+	// others with a tenth and ten times the reach, since it is the first steps that decide between valleys. The lowest sum
+	// of squares counts.
+	Searches int
 }
 
 // GeneralResult is the outcome of a minimisation by [General].
 type GeneralResult struct {
 	Result          // Free leaves out parameters that end at a bound
+	Searches    int // from the same start
 	Evaluations int // calls of Residuals, without those of numerical derivatives
 	Jacobians   int
 	Rank        int     // independent directions among the free parameters at the end
@@ -50,13 +55,11 @@ type GeneralResult struct {
 // Reason says in words how the search ended.
 func (r GeneralResult) Reason() string {
 	switch {
-	case r.rounded && r.End == Converged:
+	case r.End == Converged && r.rounded:
 		return "converged as far as rounding allows"
-	}
-	switch r.End {
-	case NotFinite:
+	case r.End == NotFinite:
 		return "residuals or derivatives at the start are not finite"
-	case Singular:
+	case r.End == Singular:
 		return "the data do not determine all parameters"
 	}
 	return r.End.String()
@@ -73,12 +76,15 @@ type General struct {
 	scale        []float64 // largest column norm so far
 	q            []float64 // trial point
 	step         []float64
-	z, inv       []float64
-	state        []uint8 // of each parameter
-	free         []int   // parameters that move
+	start, best  []float64 // parameters of the search with the lowest sum so far
+	z, inv       []float64 // scaled step; scratch of Covariance
+	state        []uint8   // of each parameter
+	free         []int     // parameters that move
 	qr           *qr
 	derivatives  *Derivatives
 	last         Squares
+	cut          bool // the last step ended at a bound
+	usable       bool // there are residuals and derivatives for Covariance
 }
 
 const (
@@ -92,8 +98,8 @@ func NewGeneral(rows, params int) *General {
 	v := func(n int) []float64 { return make([]float64, n) }
 	return &General{
 		r: v(rows), trial: v(rows), jac: v(rows * params), jac2: v(rows * params), rhs: v(rows), scale: v(params),
-		q: v(params), step: v(params), z: v(params), inv: v(params * params), state: make([]uint8, params), free: make([]int, 0, params),
-		qr: newQR(rows, params),
+		start: v(params), best: v(params), q: v(params), step: v(params), z: v(params), inv: v(params * params),
+		state: make([]uint8, params), free: make([]int, 0, params), qr: newQR(rows, params),
 	}
 }
 
@@ -107,25 +113,65 @@ func NewGeneral(rows, params int) *General {
 //
 // The search has converged when the step that remains is shorter than the tolerance in standard errors (the measure is the
 // part of the residuals in the span of the Jacobian over the rest, Technometrics 23, 179 (1981) [from memory]), or when that
-// part is no more than the rounding of the residuals.
+// part is no more than the rounding of the residuals. Near the end, where rounding hides the fall of the sum of squares, steps
+// are taken as long as they shorten what remains.
+//
+// Iterations, Evaluations and Jacobians count all searches.
 func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralResult {
 	s.check(f, p)
 	s.last = f
-	tol, limit, reach := set.Tolerance, set.Limit, set.Reach
-	if tol == 0 {
-		tol = 1e-9
+	if set.Tolerance == 0 {
+		set.Tolerance = 1e-9
 	}
-	if limit == 0 {
-		limit = 5000
+	if set.Limit == 0 {
+		set.Limit = 500
 	}
-	if reach == 0 {
-		reach = 1
+	if set.Reach == 0 {
+		set.Reach = 10
+	}
+	if set.Searches == 0 {
+		set.Searches = 3
 	}
 	s.resize(f.Rows, f.Params)
-	res := GeneralResult{Result: Result{Sum: math.NaN(), End: AtLimit}, Remaining: math.NaN()}
 	for j := range p {
 		p[j] = min(max(p[j], f.lower(j)), f.upper(j))
 	}
+	copy(s.start, p)
+	best := s.search(f, p, set)
+	best.Searches = 1
+	s.usable = best.End != NotFinite
+	for _, reach := range []float64{0.1, 10} {
+		if best.End == Converged || best.End == NotFinite || best.Searches >= set.Searches {
+			break
+		}
+		copy(s.best, p)
+		copy(p, s.start)
+		other := set
+		other.Reach *= reach
+		res := s.search(f, p, other)
+		res.Iterations += best.Iterations
+		res.Evaluations += best.Evaluations
+		res.Jacobians += best.Jacobians
+		res.Searches = best.Searches + 1
+		const same = 1e-9 // relative difference of two sums that are one optimum
+		if res.Sum < best.Sum*(1-same) || res.End == Converged && res.Sum <= best.Sum*(1+same) {
+			best = res
+			continue
+		}
+		best.Iterations, best.Evaluations, best.Jacobians, best.Searches = res.Iterations, res.Evaluations, res.Jacobians, res.Searches
+		copy(p, s.best)
+		f.Residuals(s.r, p)
+		s.jacobian(s.jac, p, &best)
+		best.Evaluations++
+		s.hold(f, p)
+	}
+	return best
+}
+
+// search is one search from p.
+func (s *General) search(f Squares, p []float64, set GeneralSettings) GeneralResult {
+	tol, limit, reach := set.Tolerance, set.Limit, set.Reach
+	res := GeneralResult{Result: Result{Sum: math.NaN(), End: AtLimit}, Remaining: math.NaN()}
 	f.Residuals(s.r, p)
 	res.Evaluations = 1
 	res.Sum = squares(s.r)
@@ -139,7 +185,10 @@ func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralR
 	if radius == 0 {
 		radius = reach * math.Sqrt(res.Sum)
 	}
-	const faint = 1e-9 // fall of the sum, relative, below which rounding hides whether a step is good
+	const (
+		curved = 0.1  // standard errors from the end, above which the path's curvature matters
+		faint  = 1e-9 // fall of the sum, relative, below which rounding hides whether a step is good
+	)
 	polish, polished, before := true, false, 0.0
 	for {
 		s.hold(f, p)
@@ -163,6 +212,9 @@ func (s *General) Minimize(f Squares, p []float64, set GeneralSettings) GeneralR
 			res.Iterations++
 			length, damping := s.bounded(f, p, radius)
 			fall := s.predicted()
+			if remaining > curved && length > 0 {
+				res.Evaluations += s.bend(f, p, length, damping)
+			}
 			f.Residuals(s.trial, s.q)
 			res.Evaluations++
 			actual := difference(s.r, s.trial)
@@ -251,6 +303,7 @@ func (s *General) resize(rows, params int) {
 	s.r, s.trial, s.rhs = s.r[:rows], s.trial[:rows], s.rhs[:rows]
 	s.jac, s.jac2 = s.jac[:rows*params], s.jac2[:rows*params]
 	s.scale, s.q, s.step, s.state = s.scale[:params], s.q[:params], s.step[:params], s.state[:params]
+	s.start, s.best = s.start[:params], s.best[:params]
 }
 
 func (f *Squares) lower(j int) float64 {
@@ -311,13 +364,15 @@ func allFinite(v []float64) bool {
 
 // Covariance stores in cov, row-major Params by Params of the last Minimize, the inverse of J'J at its end; rows and columns
 // of parameters that are held at a bound are zero. Multiply by the variance of a residual, 1 where the residuals are in units
-// of their standard deviation, else Sum over the number of residuals less Free. Where the data do not determine all parameters
-// it stores NaN and reports false.
+// of their standard deviation, else Sum over the number of residuals less Free. Where the data do not determine all parameters, or
+// the start was not finite, it stores NaN and reports false.
 func (s *General) Covariance(cov []float64) bool {
 	n := s.params
 	cov = cov[:n*n]
-	s.factor(s.r)
-	if s.qr.rank < s.qr.n {
+	if s.usable {
+		s.factor(s.r)
+	}
+	if !s.usable || s.qr.rank < s.qr.n {
 		for i := range cov {
 			cov[i] = math.NaN()
 		}

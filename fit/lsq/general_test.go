@@ -282,7 +282,7 @@ func TestGeneralEndsByName(t *testing.T) {
 		{"start at infinity", f, []float64{80, inf, 12, 80, 70, 7}, GeneralSettings{}, NotFinite},
 		{"start at NaN", f, []float64{nan, 45, 12, 80, 70, 7}, GeneralSettings{}, NotFinite},
 		{"NaN derivative", noJacobian, twoBandsStart, GeneralSettings{}, NotFinite},
-		{"three steps", f, twoBandsStart, GeneralSettings{Limit: 3}, AtLimit},
+		{"three steps", f, twoBandsStart, GeneralSettings{Limit: 3, Searches: 1}, AtLimit},
 		{"uphill derivatives", blind, twoBandsStart, GeneralSettings{}, Stalled},
 		{"two of one kind", flat, []float64{5, 3}, GeneralSettings{}, Singular},
 		{"no influence", unused, []float64{5, 3}, GeneralSettings{}, Singular},
@@ -302,6 +302,10 @@ func TestGeneralEndsByName(t *testing.T) {
 					t.Errorf("%s: parameters %v, want those given", test.name, p)
 					break
 				}
+			}
+			cov := make([]float64, len(p)*len(p))
+			if s.Covariance(cov) || !math.IsNaN(cov[0]) {
+				t.Errorf("%s: covariance %v", test.name, cov)
 			}
 			if res.Iterations != 0 || !math.IsNaN(res.Remaining) {
 				t.Errorf("%s: %d steps, %g remain", test.name, res.Iterations, res.Remaining)
@@ -381,6 +385,37 @@ func TestGeneralIsFreeOfUnits(t *testing.T) {
 		}
 		if got, want := math.Sqrt(cov2[j*7])/unit[j]*shrunk, math.Sqrt(cov[j*7]); !(math.Abs(got/want-1) <= 1e-12) {
 			t.Errorf("standard error %d: %.15g, in other units %.15g", j, want, got)
+		}
+	}
+}
+
+func TestGeneralAllFixed(t *testing.T) {
+	f := twoBands(true)
+	f.Lower, f.Upper = twoBandsStart, twoBandsStart
+	p := make([]float64, 6)
+	s := NewGeneral(f.Rows, 6)
+	res := s.Minimize(f, p, GeneralSettings{})
+	cov := make([]float64, 36)
+	if res.End != Converged || res.Free != 0 || p[3] != twoBandsStart[3] || !s.Covariance(cov) || cov[0] != 0 {
+		t.Errorf("%v, %d free at %v", res.Reason(), res.Free, p)
+	}
+}
+
+// One solver serves problems of different sizes one after the other; nothing of the last one may show.
+func TestGeneralIsReusable(t *testing.T) {
+	f := twoBands(true)
+	want, got := append([]float64(nil), twoBandsStart...), append([]float64(nil), twoBandsStart...)
+	NewGeneral(f.Rows, 6).Minimize(f, want, GeneralSettings{})
+	s := NewGeneral(200, 9)
+	for _, c := range readCertified(t) {
+		if len(c.y) <= 200 {
+			s.Minimize(c.squares(), append([]float64(nil), c.starts[0]...), GeneralSettings{})
+		}
+	}
+	s.Minimize(f, got, GeneralSettings{})
+	for j := range got {
+		if got[j] != want[j] {
+			t.Errorf("parameter %d: %v, by a new solver %v", j, got[j], want[j])
 		}
 	}
 }

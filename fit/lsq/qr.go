@@ -24,14 +24,15 @@ type qr struct {
 	w     []float64 // its right-hand side; scratch
 	extra []float64 // the row that is being rotated in
 	v     []float64 // scratch
+	other []float64 // a second right-hand side
 	rows  int
 }
 
 func newQR(rows, cols int) *qr {
 	rows = max(rows, cols) // padded with zeros, so that R is always square
 	return &qr{
-		rows: rows,
-		a:    make([]float64, rows*cols), b: make([]float64, rows), norm: make([]float64, cols),
+		rows: rows, other: make([]float64, rows),
+		a: make([]float64, rows*cols), b: make([]float64, rows), norm: make([]float64, cols),
 		pivot: make([]int, cols), tau: make([]float64, cols), work: make([]float64, max(2*cols+(cols+1)*32, rows)),
 		s: make([]float64, cols*cols), w: make([]float64, cols), extra: make([]float64, cols), v: make([]float64, cols),
 	}
@@ -121,6 +122,21 @@ func (q *qr) damped(z []float64, lambda float64) {
 		z[i] = -q.w[i]
 	}
 	backward(q.s, n, z)
+}
+
+// along stores in z what undamped and damped would for another right-hand side.
+func (q *qr) along(z, b []float64, lambda float64) {
+	q.b, q.other = q.other, q.b
+	copy(q.b, b)
+	clear(q.b[len(b):])
+	a := blas64.General{Rows: q.rows, Cols: q.n, Stride: q.n, Data: q.a[:q.rows*q.n]}
+	lapack64.Ormqr(blas.Left, blas.Trans, a, q.tau[:q.n], blas64.General{Rows: q.rows, Cols: 1, Stride: 1, Data: q.b}, q.work, len(q.work))
+	if lambda == 0 {
+		q.undamped(z)
+	} else {
+		q.damped(z, lambda)
+	}
+	q.b, q.other = q.other, q.b
 }
 
 // within stores in z, in the order of A P, the step of a length at most about radius that minimises |A z + b|, and returns
