@@ -13,7 +13,7 @@ type Squares struct {
 	// says that p is outside the model's domain: the search turns back.
 	Residuals func(r, p []float64)
 	// Jacobian stores ∂r_i/∂p_j in j, row-major Rows by Params. Where it is nil, derivatives are taken numerically, see
-	// [Derivatives]; that costs some 20 evaluations per parameter.
+	// [Derivatives]; that costs some 30 evaluations per parameter.
 	Jacobian func(j, p []float64)
 	// Lower and Upper bound the parameters; nil means none, as do -Inf and +Inf. Residuals is never asked outside them.
 	Lower, Upper []float64

@@ -234,6 +234,65 @@ func TestGeneralBoundedLinear(t *testing.T) {
 	}
 }
 
+// The first step of a linear problem with room to go: one parameter stops at its bound, the other is the best that goes with it.
+func TestGeneralStepAtABound(t *testing.T) {
+	f := Squares{Rows: 3, Params: 2, Upper: []float64{1, 10},
+		Residuals: func(r, p []float64) { r[0], r[1], r[2] = p[0]+p[1]-6, p[1]-1, p[0]-4 },
+		Jacobian:  func(j, p []float64) { copy(j, []float64{1, 1, 0, 1, 1, 0}) },
+	}
+	p := []float64{0.5, 0.5}
+	NewGeneral(3, 2).Minimize(f, p, GeneralSettings{Reach: 1e6, Limit: 1, Searches: 1})
+	if p[0] != 1 || !(math.Abs(p[1]-3) <= 1e-14) { // (1 + p1 - 6)² + (p1 - 1)² is least at 3
+		t.Errorf("stepped to %v, want [1 3]", p)
+	}
+}
+
+func TestGeneralSearchesAgain(t *testing.T) {
+	for _, c := range readCertified(t) {
+		if c.name != "mgh09" {
+			continue
+		}
+		once, thrice := append([]float64(nil), c.starts[0]...), append([]float64(nil), c.starts[0]...)
+		s := NewGeneral(len(c.y), 4)
+		// With this reach the first step falls into a valley whose floor is at infinity.
+		a := s.Minimize(c.squares(), once, GeneralSettings{Reach: 1, Searches: 1})
+		b := s.Minimize(c.squares(), thrice, GeneralSettings{Reach: 1})
+		if a.End != AtLimit || a.Searches != 1 || b.End != Converged || b.Searches < 2 || !(worst(thrice, c.want) >= 6) {
+			t.Errorf("one search: %v, %d made: %v at %v", a.Reason(), b.Searches, b.Reason(), thrice)
+		}
+	}
+	// Where none converges, the lowest sum comes back, with the parameters and the covariance that belong to it.
+	f := twoBands(true)
+	least := math.Inf(1)
+	single := make([]float64, 6)
+	for _, reach := range []float64{1, 0.1, 10} {
+		p := append([]float64(nil), twoBandsStart...)
+		if res := NewGeneral(f.Rows, 6).Minimize(f, p, GeneralSettings{Reach: reach, Limit: 2, Searches: 1}); res.Sum < least {
+			least = res.Sum
+			copy(single, p)
+		}
+	}
+	p := append([]float64(nil), twoBandsStart...)
+	s := NewGeneral(f.Rows, 6)
+	res := s.Minimize(f, p, GeneralSettings{Reach: 1, Limit: 2})
+	r := make([]float64, f.Rows)
+	f.Residuals(r, p)
+	if res.End != AtLimit || res.Searches != 3 || res.Iterations != 6 || res.Sum != least || squares(r) != least {
+		t.Errorf("%v after %d searches, %d steps; sum %g, at the parameters %g, least %g",
+			res.Reason(), res.Searches, res.Iterations, res.Sum, squares(r), least)
+	}
+	cov, want := make([]float64, 36), make([]float64, 36)
+	s.Covariance(cov)
+	s2 := NewGeneral(f.Rows, 6)
+	s2.Minimize(f, single, GeneralSettings{Tolerance: 1e9}) // stays there
+	s2.Covariance(want)
+	for j := range p {
+		if !(math.Abs(cov[7*j]/want[7*j]-1) <= 1e-9) {
+			t.Errorf("variance %d: %g, at these parameters %g", j, cov[7*j], want[7*j])
+		}
+	}
+}
+
 func TestGeneralEndsByName(t *testing.T) {
 	f := twoBands(true)
 	nan, inf := math.NaN(), math.Inf(1)
@@ -269,6 +328,10 @@ func TestGeneralEndsByName(t *testing.T) {
 		}
 	}}
 	few := Squares{Rows: 1, Params: 2, Residuals: func(r, p []float64) { r[0] = p[0]*p[0] + p[1] - 4 }}
+	settled := Squares{Rows: 2, Params: 1,
+		Residuals: func(r, p []float64) { r[0], r[1] = math.Exp(-p[0])-1, 2 },
+		Jacobian:  func(j, p []float64) { j[0], j[1] = -math.Exp(-p[0]), 0 },
+	}
 	for _, test := range []struct {
 		name  string
 		f     Squares
@@ -287,6 +350,7 @@ func TestGeneralEndsByName(t *testing.T) {
 		{"two of one kind", flat, []float64{5, 3}, GeneralSettings{}, Singular},
 		{"no influence", unused, []float64{5, 3}, GeneralSettings{}, Singular},
 		{"fewer residuals than parameters", few, []float64{5, 3}, GeneralSettings{}, Singular},
+		{"infinity with finite residuals", settled, []float64{inf}, GeneralSettings{}, NotFinite},
 		{"zero residual", perfect, []float64{-1, 1}, GeneralSettings{}, Converged},
 	} {
 		p := append([]float64(nil), test.start...)
@@ -336,6 +400,37 @@ func TestGeneralTurnsBackFromNaN(t *testing.T) {
 	// The alternating hundredth moves the parameters by about its own size.
 	if res.End != Converged || !(math.Abs(p[0]-2) <= 0.02 && math.Abs(p[1]-0.5) <= 0.02) {
 		t.Errorf("%v at %v, want about [2 0.5]", res.Reason(), p)
+	}
+}
+
+// So it must where only the derivatives are NaN: here about the point that an undisturbed search steps to first.
+func TestGeneralTurnsBackFromNaNDerivatives(t *testing.T) {
+	f := twoBands(true)
+	jacobian := f.Jacobian
+	var asked []float64 // heights of the first band
+	f.Jacobian = func(j, p []float64) {
+		asked = append(asked, p[0])
+		jacobian(j, p)
+	}
+	want := append([]float64(nil), twoBandsStart...)
+	NewGeneral(f.Rows, 6).Minimize(f, want, GeneralSettings{})
+	refused := 0
+	f.Jacobian = func(j, p []float64) {
+		jacobian(j, p)
+		if math.Abs(p[0]-asked[1]) < 1e-6 {
+			j[5] = math.NaN()
+			refused++
+		}
+	}
+	p := append([]float64(nil), twoBandsStart...)
+	res := NewGeneral(f.Rows, 6).Minimize(f, p, GeneralSettings{})
+	if res.End != Converged || refused != 1 {
+		t.Errorf("%v, %d points without derivatives", res.Reason(), refused)
+	}
+	for j, v := range p {
+		if !(math.Abs(v-want[j]) <= 1e-8) { // standard errors here are 0.1 to 1
+			t.Errorf("parameter %d: %.12g, undisturbed %.12g", j, v, want[j])
+		}
 	}
 }
 

@@ -186,6 +186,45 @@ func TestNIST(t *testing.T) {
 	}
 }
 
+// TestNISTInsideBounds fits in a box just around start and solution, which the search must not ask outside. A box makes local
+// optima of its own on its faces: one problem, a peak that starts beyond nearly all its data, runs into one.
+func TestNISTInsideBounds(t *testing.T) {
+	onFace := 0
+	for _, c := range readCertified(t) {
+		for k, start := range c.starts {
+			f := c.squares()
+			f.Lower, f.Upper = make([]float64, f.Params), make([]float64, f.Params)
+			for j, v := range start {
+				margin := 0.1 * math.Abs(v-c.want[j])
+				f.Lower[j], f.Upper[j] = min(v, c.want[j])-margin, max(v, c.want[j])+margin
+			}
+			residuals, outside := f.Residuals, 0
+			f.Residuals = func(r, p []float64) {
+				for j, v := range p {
+					if !(v >= f.Lower[j] && v <= f.Upper[j]) {
+						outside++
+					}
+				}
+				residuals(r, p)
+			}
+			p := append([]float64(nil), start...)
+			res := NewGeneral(f.Rows, f.Params).Minimize(f, p, GeneralSettings{})
+			digits := worst(p, c.want)
+			if res.End == Converged && res.Free < f.Params {
+				onFace++
+				t.Logf("%s from start %d: on the face of the box, sum %g, certified %g", c.name, k+1, res.Sum, c.sum)
+				digits = 6
+			}
+			if res.End != Converged || outside > 0 || !(digits >= 6) {
+				t.Errorf("%s from start %d: %v after %d steps, %.1f digits, %d times outside the bounds", c.name, k+1, res.Reason(), res.Iterations, digits, outside)
+			}
+		}
+	}
+	if onFace > 1 {
+		t.Errorf("%d fits ended on a face", onFace)
+	}
+}
+
 // TestNISTWithoutDerivatives repeats the fits with numerical Jacobians. They must not be the weak link: the same digits are
 // asked.
 func TestNISTWithoutDerivatives(t *testing.T) {

@@ -33,7 +33,7 @@ func NewDerivatives(rows, params int) *Derivatives {
 // parameter itself, over which the residuals are still nearly straight, so the scale on which a parameter matters need not be
 // its own size: a band at 1584 that is 14 wide is no trouble. Where a bound leaves no room the differences are one-sided.
 //
-// Accuracy: some 1e-11 of a column's length where the residuals are smooth and accurate to double precision. About 30
+// Accuracy: some 1e-12 of a column's length where the residuals are smooth and accurate to double precision. About 30
 // evaluations per parameter.
 func (d *Derivatives) Jacobian(jac []float64, f Squares, p []float64) {
 	q := d.q[:f.Params]
