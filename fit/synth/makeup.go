@@ -93,12 +93,13 @@ func newMakeup(layers int, turbostratic bool, width, skew float64) makeup {
 	return makeup{parts, fit.width}
 }
 
-// fitWindow is the half width, cm-1, of the window on which a band is compared with one Lorentzian, as wide as the usual window
-// for 2D.
+// fitWindow is the half width, cm-1, of the window on which a band is compared with one Lorentzian over a linear background: as
+// wide as the usual window for 2D. Published widths depend on it: a free background takes up part of the shoulders.
 const fitWindow = 150
 
-// fitOne returns the Lorentzian closest to a sum of Lorentzians by unweighted least squares without background, on a grid of
-// 1 cm-1 within fitWindow: Gauss-Newton from the moments. The residual is small and smooth, so that it needs no damping.
+// fitOne returns the Lorentzian that, with a linear background, comes closest to a sum of Lorentzians by unweighted least
+// squares on a grid of 1 cm-1 within fitWindow of the centre of gravity: Gauss-Newton from the moments. The residual is small and smooth, so that it
+// needs no damping.
 func fitOne(parts []part) part {
 	var sum, at float64
 	for _, p := range parts {
@@ -107,29 +108,32 @@ func fitOne(parts []part) part {
 	}
 	at /= sum
 	fit := part{at, sum / 55, 55}
-	centre := math.Round(at)
-	for range 30 {
-		var a [3][4]float64 // normal equations
+	var level, slope float64
+	for range 50 {
+		var a [5][6]float64 // normal equations
 		for i := -fitWindow; i <= fitWindow; i++ {
-			x := centre + float64(i)
-			y := 0.0
+			x := at + float64(i)
+			y := -level - slope*float64(i)
 			for _, p := range parts {
 				u := 2 * (x - p.offset) / p.width
 				y += p.height / (1 + u*u)
 			}
 			u := 2 * (x - fit.offset) / fit.width
 			l := 1 / (1 + u*u)
-			row := [4]float64{l, fit.height * 4 * u * l * l / fit.width, fit.height * 2 * u * u * l * l / fit.width, y - fit.height*l}
-			for j := range 3 {
-				for k := range 4 {
+			row := [6]float64{l, fit.height * 4 * u * l * l / fit.width, fit.height * 2 * u * u * l * l / fit.width,
+				1, float64(i), y - fit.height*l}
+			for j := range 5 {
+				for k := range 6 {
 					a[j][k] += row[j] * row[k]
 				}
 			}
 		}
-		step := solve3(a)
+		step := solve(a)
 		fit.height += step[0]
 		fit.offset += step[1]
 		fit.width = max(fit.width/2, fit.width+step[2])
+		level += step[3]
+		slope += step[4]
 		if math.Abs(step[1])+math.Abs(step[2]) < 1e-9 {
 			break
 		}
@@ -137,19 +141,20 @@ func fitOne(parts []part) part {
 	return fit
 }
 
-// solve3 solves three linear equations, of which a holds the matrix and the right-hand side.
-func solve3(a [3][4]float64) (x [3]float64) {
-	for i := range 3 {
-		for j := i + 1; j < 3; j++ {
+// solve solves five linear equations, of which a holds the matrix and the right-hand side, by elimination: the matrix is
+// positive definite.
+func solve(a [5][6]float64) (x [5]float64) {
+	for i := range 5 {
+		for j := i + 1; j < 5; j++ {
 			f := a[j][i] / a[i][i]
-			for k := i; k < 4; k++ {
+			for k := i; k < 6; k++ {
 				a[j][k] -= f * a[i][k]
 			}
 		}
 	}
-	for i := 2; i >= 0; i-- {
-		x[i] = a[i][3]
-		for k := i + 1; k < 3; k++ {
+	for i := 4; i >= 0; i-- {
+		x[i] = a[i][5]
+		for k := i + 1; k < 5; k++ {
 			x[i] -= a[i][k] * x[k]
 		}
 		x[i] /= a[i][i]
