@@ -1,0 +1,193 @@
+package page
+
+import (
+	"cmp"
+	"fmt"
+	"math"
+	"slices"
+	"strconv"
+	"strings"
+
+	"bandgrid/mapio/survey"
+)
+
+// LayerName says a layer number in words.
+func LayerName(n float64) string {
+	switch n {
+	case 0:
+		return "bare substrate"
+	case 1:
+		return "single layer"
+	case 2:
+		return "two layers"
+	case 3:
+		return "three layers"
+	case 4:
+		return "four layers"
+	case 5:
+		return "five or more layers"
+	}
+	return "undetermined"
+}
+
+// Summary says in sentences what was found: areas by layer number, then the median D/G of single layers, G position and 2D
+// width. The command prints it and the report opens with it.
+func Summary(s *survey.Survey) []string {
+	var list []string
+	number := s.Map("layer_number")
+	if number != nil {
+		list = append(list, layerSentences(s, number)...)
+	}
+	of, mask := "the whole map", func(int) bool { return true }
+	if number != nil && slices.Contains(number.Values, 1) {
+		of, mask = "single layers", func(i int) bool { return number.Values[i] == 1 }
+	}
+	for _, q := range []struct{ name, words, unit string }{
+		{"d_g_ratio", "D/G height ratio", ""}, {"g_position", "G position", " cm⁻¹"}, {"2d_width", "2D width", " cm⁻¹"},
+	} {
+		m := s.Map(q.name)
+		if m == nil {
+			continue
+		}
+		if median, spread, n := middle(m.Values, mask); n > 0 {
+			list = append(list, fmt.Sprintf("%s of %s: median %s, spread %s%s (%d pixels).", q.words, of, decimals(median, spread), significant(spread), q.unit, n))
+		}
+	}
+	return list
+}
+
+// layerSentences gives a sentence for each layer number, single layers first.
+func layerSentences(s *survey.Survey, number *survey.Quantity) (list []string) {
+	type sum struct {
+		pixels, regions int
+		area, variance  float64
+	}
+	var sums [6]sum
+	undetermined := 0
+	measured := s.Map("status")
+	for i, v := range number.Values {
+		switch {
+		case v >= 0 && v <= 5:
+			sums[int(v)].pixels++
+		case measured == nil || measured.Values[i] == measured.Values[i]:
+			undetermined++
+		}
+	}
+	for _, r := range s.Regions {
+		if r.Layer >= 0 && r.Layer <= 5 {
+			a := &sums[int(r.Layer)]
+			a.regions++
+			a.area += r.Area
+			a.variance += r.AreaSE * r.AreaSE
+		}
+	}
+	for _, n := range []int{1, 2, 3, 4, 5, 0} {
+		a := sums[n]
+		if a.pixels == 0 && n != 1 {
+			continue
+		}
+		name := LayerName(float64(n))
+		name = strings.ToUpper(name[:1]) + name[1:]
+		switch {
+		case a.pixels == 0:
+			list = append(list, name+": none found.")
+		case a.regions == 0 || !(a.area > 0):
+			list = append(list, fmt.Sprintf("%s: %s, no connected region.", name, plural(a.pixels, "pixel")))
+		default:
+			list = append(list, fmt.Sprintf("%s: %s µm² in %s.", name, plusMinus(a.area, math.Sqrt(a.variance)), plural(a.regions, "region")))
+		}
+	}
+	if undetermined > 0 {
+		list = append(list, fmt.Sprintf("Undetermined: %s of %d measured.", plural(undetermined, "pixel"), undetermined+total(sums[:], func(a sum) int { return a.pixels })))
+	}
+	return list
+}
+
+func total[T any](list []T, of func(T) int) (n int) {
+	for _, v := range list {
+		n += of(v)
+	}
+	return n
+}
+
+func plural(n int, noun string) string {
+	if n == 1 {
+		return "1 " + noun
+	}
+	return fmt.Sprintf("%d %ss", n, noun)
+}
+
+// middle returns the median, the robust spread (1.4826 times the median absolute deviation) and the number of values that are
+// there where mask holds.
+func middle(values []float32, mask func(int) bool) (median, spread float64, n int) {
+	var v []float32
+	for i, x := range values {
+		if x == x && mask(i) {
+			v = append(v, x)
+		}
+	}
+	if len(v) == 0 {
+		return math.NaN(), math.NaN(), 0
+	}
+	slices.SortFunc(v, cmp.Compare)
+	m := v[len(v)/2]
+	d := make([]float32, len(v))
+	for i, x := range v {
+		d[i] = max(x-m, m-x)
+	}
+	slices.SortFunc(d, cmp.Compare)
+	return float64(m), 1.4826 * float64(d[len(d)/2]), len(v)
+}
+
+// significant writes a number with three significant digits, without exponent where it is of ordinary size.
+func significant(v float64) string {
+	switch a := math.Abs(v); {
+	case math.IsNaN(v):
+		return "–"
+	case v == 0:
+		return "0"
+	case a >= 1e6 || a < 1e-4:
+		return strconv.FormatFloat(v, 'e', 2, 64)
+	case a >= 100:
+		return strconv.FormatFloat(v, 'f', 0, 64)
+	default:
+		return strconv.FormatFloat(v, 'f', 2-int(math.Floor(math.Log10(a))), 64)
+	}
+}
+
+// decimals writes a value to the second significant digit of its error or spread.
+func decimals(v, spread float64) string {
+	if !(spread > 0) || math.IsInf(spread, 0) || math.IsNaN(v) {
+		return significant(v)
+	}
+	return strconv.FormatFloat(v, 'f', min(6, max(0, 1-int(math.Floor(math.Log10(spread))))), 64)
+}
+
+// plusMinus writes a value with its standard error, both to the error's second significant digit.
+func plusMinus(v, se float64) string {
+	if !(se > 0) {
+		return significant(v)
+	}
+	return decimals(v, se) + " ± " + decimals(se, se)
+}
+
+// quality says how well the model explains the spectra.
+func quality(s *survey.Survey) (list []string) {
+	everywhere := func(int) bool { return true }
+	if q := s.Map("chi2"); q != nil {
+		if median, _, n := middle(q.Values, everywhere); n > 0 {
+			list = append(list, fmt.Sprintf("Median reduced chi-square %s over %d pixels; 1 means that the model explains a spectrum to within its noise.", significant(median), n))
+		}
+	}
+	if q := s.Map("spikes"); q != nil {
+		channels, pixels := 0, 0
+		for _, v := range q.Values {
+			if v > 0 {
+				channels += int(v)
+				pixels++
+			}
+		}
+		list = append(list, fmt.Sprintf("Cosmic rays: %s left out, in %s.", plural(channels, "channel"), plural(pixels, "pixel")))
+	}
+	return list
+}
