@@ -39,7 +39,8 @@ type Scene struct {
 	Objects []Object `json:"objects"`
 
 	shifts  []float64 // ascending
-	cells   []int32   // of each pixel, in order of acquisition
+	cells   []int32   // of each pixel, in order of acquisition; those that a cut leaves out too
+	length  int       // pixels that are measured in full
 	energy  float64   // of the laser's photons, eV
 	objects []object
 	optics  optics
@@ -202,6 +203,10 @@ func (s *Scene) Prepare() error {
 		}
 	}
 	s.cells = s.Stage.order(s.Seed)
+	s.length = len(s.cells)
+	if s.Stage.Cut > 0 {
+		s.length = int(s.Stage.Cut * float64(len(s.cells)))
+	}
 	s.spot, s.reach = spotSamples(s.Instrument.Spot)
 	s.back = make([]float64, len(s.shifts))
 	s.respond = make([]float64, len(s.shifts))
@@ -291,7 +296,10 @@ func (b Band) check() error {
 }
 
 // Len is the number of pixels in the run, repeated ones included.
-func (s *Scene) Len() int { return len(s.cells) }
+func (s *Scene) Len() int { return s.length }
+
+// Torn tells whether the run ends in the middle of a pixel: the one after the last, which [Generator.Pixel] makes too.
+func (s *Scene) Torn() bool { return s.length < len(s.cells) }
 
 // Axis returns the shift of each channel in the run's order, cm-1.
 func (s *Scene) Axis() scan.Axis {

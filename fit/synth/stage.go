@@ -105,9 +105,6 @@ func (s *Stage) order(seed uint64) []int32 {
 			}
 		}
 	}
-	if s.Cut > 0 {
-		cells = cells[:int(s.Cut*float64(len(cells)))]
-	}
 	return cells
 }
 
