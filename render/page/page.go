@@ -6,8 +6,8 @@ package page
 
 import (
 	"bytes"
-	"encoding/base64"
 	_ "embed"
+	"encoding/base64"
 	"encoding/json"
 	"fmt"
 	htmltemplate "html/template"
