@@ -10,7 +10,7 @@ func Median(v []float64) float64 {
 	if n == 0 {
 		return math.NaN()
 	}
-	high := nth(v, n/2)
+	high := Select(v, n/2)
 	if n%2 == 1 {
 		return high
 	}
@@ -21,9 +21,9 @@ func Median(v []float64) float64 {
 	return (low + high) / 2
 }
 
-// nth reorders v so that v[k] is what it would be if v were sorted, with nothing greater before it, and returns it.
-// Quickselect, Commun. ACM 4, 321 (1961), https://doi.org/10.1145/366622.366647.
-func nth(v []float64, k int) float64 {
+// Select reorders v so that v[k] is what it would be if v were sorted, with nothing greater before it and nothing less behind
+// it, and returns it. v must not hold NaN. Quickselect, Commun. ACM 4, 321 (1961), https://doi.org/10.1145/366622.366647.
+func Select[T float32 | float64](v []T, k int) T {
 	lo, hi := 0, len(v)-1
 	for lo < hi {
 		pivot := v[lo+(hi-lo)/2]
