@@ -76,11 +76,17 @@ func newMakeup(layers int, turbostratic bool, width, skew float64) makeup {
 		low, high = 10, 90
 		vary = func(t float64) { parts[0].width, parts[1].width = t, t }
 	}
-	var fit part
-	for range 40 {
+	vary((low + high) / 2)
+	var sum, at float64
+	for _, p := range parts {
+		sum += p.height * p.width
+		at += p.height * p.width * p.offset
+	}
+	fit := part{at / sum, sum / 55, 55}
+	for range 30 {
 		mid := (low + high) / 2
 		vary(mid)
-		if fit = fitOne(parts); fit.width < width {
+		if fit = fitOne(parts, fit); fit.width < width {
 			low = mid
 		} else {
 			high = mid
@@ -98,16 +104,15 @@ func newMakeup(layers int, turbostratic bool, width, skew float64) makeup {
 const fitWindow = 150
 
 // fitOne returns the Lorentzian that, with a linear background, comes closest to a sum of Lorentzians by unweighted least
-// squares on a grid of 1 cm-1 within fitWindow of the centre of gravity: Gauss-Newton from the moments. The residual is small and smooth, so that it
-// needs no damping.
-func fitOne(parts []part) part {
+// squares on a grid of 1 cm-1 within fitWindow of the centre of gravity: Gauss-Newton from a start. The residual is small and
+// smooth, so that it needs no damping.
+func fitOne(parts []part, fit part) part {
 	var sum, at float64
 	for _, p := range parts {
 		sum += p.height * p.width
 		at += p.height * p.width * p.offset
 	}
 	at /= sum
-	fit := part{at, sum / 55, 55}
 	var level, slope float64
 	for range 50 {
 		var a [5][6]float64 // normal equations

@@ -6,7 +6,7 @@ import (
 )
 
 // manyElectrons is the mean above which electrons are drawn by [detector.many] rather than exactly. Against the exact
-// distribution the largest difference of the cumulative distribution is then below 6e-5, ever smaller for larger means
+// distribution the largest difference of the cumulative distribution is then below 3e-6, ever smaller for larger means
 // (TestManyElectronsAgainstExact).
 const manyElectrons = 100
 
@@ -72,10 +72,14 @@ func (d *detector) electrons(mean float64) float64 {
 
 // many draws electrons for large means from one normal number z, by the Cornish-Fisher expansion to the fourth cumulant
 // (Biometrika 47, 209 (1960), the same in Abramowitz-Stegun 26.2.49). Poisson light with Gaussian read noise has the
-// cumulants mean, mean + read², mean, mean. Without read noise the result is a whole number: rounding adds 1/12 to the
-// variance, which is taken off before.
+// cumulants mean, mean + read², mean, mean. With little read noise, which is added afterwards, the result is a whole number:
+// rounding adds 1/12 to the variance, which is taken off before.
 func (d *detector) many(mean float64) float64 {
-	return expand(mean, d.read, d.r.NormFloat64())
+	n := expand(mean, d.read, d.r.NormFloat64())
+	if d.read > 0 && d.read < wholeBelow {
+		n += d.read * d.r.NormFloat64()
+	}
+	return n
 }
 
 func expand(mean, read, z float64) float64 {
@@ -95,9 +99,9 @@ func expand(mean, read, z float64) float64 {
 	return v
 }
 
-// wholeBelow is the read noise, electrons, that smears the steps between whole electrons: above 0.5 they are left with less
-// than 1.5 % of their height.
-const wholeBelow = 0.5
+// wholeBelow is the read noise, electrons, that smears the steps between whole electrons: from 1 they are left with
+// exp(-2π²), 3e-9 of their height.
+const wholeBelow = 1
 
 // poisson draws a Poisson number exactly. Below 10 by multiplying uniform numbers, above by transformed rejection with squeeze
 // (Insur. Math. Econ. 12, 39 (1993), algorithm PTRS).

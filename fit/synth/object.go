@@ -17,7 +17,6 @@ type object struct {
 	dPosition      float64
 	dprimePosition float64
 	twoDPosition   float64
-	undoped        float64 // doping's factor on 2D/G for no carriers
 }
 
 // Widths of bands of an undoped and perfect layer, cm-1, from memory: G is 5 plus what electron-hole pairs add (15.6).

@@ -125,12 +125,13 @@ func (s *Shape) box() (x0, y0, x1, y1 float64) {
 
 // spotSamples returns points of equal weight that stand for a Gaussian spot of that FWHM, and the distance of the furthest.
 // They lie on a sunflower spiral, whose radii are the quantiles of the spot's radial distribution: edges in any direction are
-// then met without the steps that a square grid has. Against the error function of a straight edge the share is within 0.006.
+// then met without the steps that a square grid has. Against the error function of a straight edge shares are off by 0.0024 (root mean
+// square), at most by 0.012.
 func spotSamples(fwhm float64) ([]point, float64) {
 	if fwhm == 0 {
 		return []point{{}}, 0
 	}
-	const n = 256
+	const n = 512
 	sigma := fwhm / 2.354820045
 	golden := math.Pi * (3 - math.Sqrt(5))
 	points := make([]point, n)
