@@ -10,7 +10,8 @@ import (
 	"path/filepath"
 	"strings"
 
-	"bandgrid/fit/synth")
+	"bandgrid/fit/synth"
+)
 
 // A pixelTruth is the truth of a pixel with the stage position that the run reports.
 type pixelTruth struct {
