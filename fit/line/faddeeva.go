@@ -27,10 +27,10 @@ func Faddeeva(z complex128) complex128 {
 }
 
 const (
-	innerRadius  = 8.0 // |z| where the rules change
-	innerRadius2 = innerRadius * innerRadius
-	step         = 0.5 // of the trapezoidal rule: the argument of its residue is then reduced exactly
-	invSqrtPi    = 1 / math.SqrtPi
+	innerRadius = 8.0 // |z| where the rules change
+	inner       = innerRadius * innerRadius
+	step        = 0.5 // of the trapezoidal rule: the argument of its residue is then reduced exactly
+	invSqrtPi   = 1 / math.SqrtPi
 )
 
 // A pole pair at ±t with its weight stands for weight · iz/(z²-t²).
@@ -90,14 +90,17 @@ func outer(r2 float64) poles {
 
 // faddeeva returns the parts of w(x+iy) for x, y >= 0.
 func faddeeva(x, y float64) (re, im float64) {
+	if !(y >= 0) {
+		return math.NaN(), math.NaN()
+	}
 	r2 := x*x + y*y
-	if r2 < innerRadius2 {
+	if r2 < inner {
 		rule, re, im := residue(x, y)
 		a, b := rule.sum(x, y)
 		return re + a, im + b
 	}
 	rule := outer(r2)
-	if rule == nil || !(y >= 0) {
+	if rule == nil {
 		w, _, _ := far(x, y)
 		return real(w), imag(w)
 	}
@@ -107,11 +110,11 @@ func faddeeva(x, y float64) (re, im float64) {
 
 // sum returns the parts of Σ weight · iz/(z²-t²).
 func (p poles) sum(x, y float64) (re, im float64) {
-	a, b2, r2 := (x-y)*(x+y), 4*(x*y)*(x*y), x*x+y*y
+	a, b, r2 := (x-y)*(x+y), 2*x*y, x*x+y*y
 	var s, st float64
 	for _, pole := range p {
 		d := a - pole.t2
-		q := pole.weight / (d*d + b2)
+		q := pole.weight * (1 / (d*d + b*b))
 		s += q
 		st += q * pole.t2
 	}
@@ -130,11 +133,8 @@ func residue(x, y float64) (rule poles, re, im float64) {
 		nearest = math.Floor(u) + 0.5
 		delta = u - nearest
 	}
-	if y > 5 || !(y >= 0) { // below exp(25-20π), 4e-17 of either part
-		if y > 5 {
-			return rule, 0, 0
-		}
-		return rule, math.NaN(), math.NaN()
+	if y > 5 { // below exp(25-20π), 4e-17 of either part
+		return rule, 0, 0
 	}
 	e := math.Exp(-2 * math.Pi / step * y)
 	sin, cos := math.Sincos(2 * math.Pi * delta) // cos >= 0
@@ -155,12 +155,8 @@ func gauss(x, y float64) float64 {
 	return math.Exp(-s) * (1 - math.FMA(x, x, -s))
 }
 
-// far returns w and its first two derivatives for |z| > 1e9. NaN below the real axis.
+// far returns w and its first two derivatives for |z| > 1e9.
 func far(x, y float64) (w, w1, w2 complex128) {
-	if !(y >= 0) {
-		nan := complex(math.NaN(), math.NaN())
-		return nan, nan, nan
-	}
 	c := 1 / complex(x, y)
 	c2 := c * c
 	return times(c, invSqrtPi), times(c2, -invSqrtPi), times(c2*c, 2*invSqrtPi)
@@ -175,7 +171,7 @@ func times(z complex128, f float64) complex128 { return complex(-f*imag(z), f*re
 // place: outside, the sum over the poles is differentiated instead.
 func faddeeva2(x, y float64) (w, w1, w2 complex128) {
 	r2 := x*x + y*y
-	if r2 < innerRadius2 {
+	if r2 < inner {
 		rule, re, im := residue(x, y)
 		a, b := rule.sum(x, y)
 		re, im = re+a, im+b
@@ -186,7 +182,7 @@ func faddeeva2(x, y float64) (w, w1, w2 complex128) {
 		return complex(re, im), complex(re1, im1), complex(re2, im2)
 	}
 	rule := outer(r2)
-	if rule == nil || !(y >= 0) {
+	if rule == nil {
 		return far(x, y)
 	}
 	w, w1, w2 = rule.sum2(x, y)
@@ -201,18 +197,20 @@ func faddeeva2(x, y float64) (w, w1, w2 complex128) {
 // sum2 returns Σ weight · iz/(z²-t²) and its first two derivatives, -i Σ weight (z²+t²)/(z²-t²)² and
 // 2iz Σ weight (z²+3t²)/(z²-t²)³.
 func (p poles) sum2(x, y float64) (w, w1, w2 complex128) {
-	a, b := (x-y)*(x+y), 2*x*y // z²
-	var s, s1, s2 complex128
+	a, b, r2 := (x-y)*(x+y), 2*x*y, x*x+y*y // z² = a+ib
+	var s, st float64
+	var s1, s2 complex128
 	for _, pole := range p {
 		d := a - pole.t2
-		q := 1 / (d*d + b*b)
-		c := complex(d*q, -b*q)
-		cw := complex(pole.weight*d*q, -pole.weight*b*q)
-		s += cw
-		cw *= c
-		s1 += cw * complex(a+pole.t2, b)
-		s2 += cw * c * complex(a+3*pole.t2, b)
+		inv := 1 / (d*d + b*b)
+		q := pole.weight * inv
+		s += q
+		st += q * pole.t2
+		c := complex(d*inv, -b*inv)
+		f := complex(d*q, -b*q) * c
+		s1 += f * complex(a+pole.t2, b)
+		s2 += f * c * complex(a+3*pole.t2, b)
 	}
-	z := complex(x, y)
-	return times(z*s, 1), times(s1, -1), times(z*s2, 2)
+	w = complex(y*(r2*s+st), x*(r2*s-st)) // as sum, to the last bit
+	return w, times(s1, -1), times(complex(x, y)*s2, 2)
 }

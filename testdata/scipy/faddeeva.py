@@ -1,6 +1,7 @@
-"""Writes faddeeva.csv and voigt.csv, the reference values of fit/line, and prints the Gauss-Hermite rules of its source.
+"""Writes faddeeva.csv and voigt.csv, the reference values of fit/line, and prints the Gauss-Hermite rules of its source
+and the FWHM of its test.
 
-    /usr/bin/python3 faddeeva.py        (Debian 12: python3-scipy 1.10.1, python3-mpmath 1.2.1; about two minutes)
+    /usr/bin/python3 faddeeva.py        (Debian 12: python3-scipy 1.10.1, python3-mpmath 1.2.1; about four minutes)
 
 mpmath gives w(z) = exp(-z^2) erfc(-iz) with so many digits that what cancels leaves 20, and the asymptotic series beyond
 |z| = 40. SciPy's values (wofz, voigt_profile) stand beside them.
@@ -127,6 +128,20 @@ def voigt():
     print(len(rows), "points; voigt_profile differs by", worst(pairs))
 
 
+def widths():
+    mp.dps = 40
+    for lorentz, gauss in ((14.0, 1.8), (2.0, 2.354820045030949), (0.01, 3.0), (16.0, 16.0), (1.8, 14.0)):
+        k, y = 2 * sqrt(log(2)) / mpf(gauss), sqrt(log(2)) * mpf(lorentz) / mpf(gauss)
+
+        def profile(x):
+            return (exp(-mpc(x, y) ** 2) * erfc(mpc(y, -x))).real
+
+        start = k * (0.5346 * lorentz + np.sqrt(0.2166 * lorentz**2 + gauss**2)) / 2
+        root = findroot(lambda x: profile(x) / profile(mpf(0)) - 0.5, start)
+        print("{%r, %r, %s}," % (lorentz, gauss, text(2 * root / k)))
+
+
 rules()
+widths()
 faddeeva()
 voigt()
