@@ -23,10 +23,8 @@ func (p *panel) drawAxes(f *plot.Figure) {
 			f.Line(st.Ink, st.Stroke, plot.Point{X: b.X - st.Tick, Y: y}, plot.Point{X: b.X, Y: y})
 			f.Text(plot.Text{At: plot.Point{X: b.X - st.Tick - 0.3*st.Small, Y: y + 0.36*st.Small}, String: p.y.Label[i], Size: st.Small, Align: plot.Right, Color: st.Ink})
 		}
-		if title := p.y.Axis("y", "um"); plot.TextWidth(title, st.Body, false) <= b.H+2*st.Body {
-			f.Text(plot.Text{At: plot.Point{X: b.X - st.Tick - 0.3*st.Small - p.widest(p.y) - 0.35*st.Body, Y: b.Y + b.H/2}, String: title, Size: st.Body,
-				Align: plot.Middle, Upward: true, Color: st.Ink})
-		}
+		f.Text(plot.Text{At: plot.Point{X: b.X - st.Tick - 0.3*st.Small - p.widest(p.y) - 0.35*st.Body, Y: b.Y + b.H/2}, String: p.y.Axis("y", "um"), Size: st.Body,
+			Align: plot.Middle, Upward: true, Color: st.Ink})
 	}
 	p.drawScale(f, base)
 }
@@ -34,10 +32,7 @@ func (p *panel) drawAxes(f *plot.Figure) {
 // drawScale draws the title of the x axis and the scale bar: at the right end of the same row, or on the next one.
 func (p *panel) drawScale(f *plot.Figure, base float64) {
 	st, b := p.st, p.box
-	title := p.frame.titleX
-	if p.x.Exp != 0 {
-		title = p.x.Axis("x", "um")
-	}
+	title := p.titleX()
 	tw, sw := plot.TextWidth(title, st.Body, false), p.scaleWidth()
 	baseline := base + 1.1*st.Body
 	text := plot.Text{At: plot.Point{X: b.X + b.W/2, Y: baseline}, String: title, Size: st.Body, Align: plot.Middle, Color: st.Ink}

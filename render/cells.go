@@ -18,7 +18,7 @@ type Options struct {
 	FontPt   float64    // body text in points; default 8.5
 	Range    [2]float64 // values at the ends of the colours; NaN, or both 0, means the 2nd and 98th percentile
 	Outlines bool       // draw the outlines of regions
-	Workers  int        // of Figures; default 1
+	Workers  int        // of Standard; default 1
 }
 
 func (o Options) width() float64 {

@@ -20,6 +20,19 @@ type frame struct {
 func (f frame) width() float64  { return f.maxX - f.minX }
 func (f frame) height() float64 { return f.maxY - f.minY }
 
+// place writes a stage position.
+func place(um float64) string { return plot.Number(math.Round(um*1000)/1000, decimals(um)) }
+
+// decimals are as many as a position in um needs, three at most.
+func decimals(um float64) int {
+	for n := range 3 {
+		if p := um * math.Pow10(n); math.Abs(p-math.Round(p)) < 1e-3 {
+			return n
+		}
+	}
+	return 3
+}
+
 func newFrame(s *survey.Survey) frame {
 	g := s.Grid
 	f := frame{titleX: "x (µm)", titleY: "y (µm)", tickX: true, tickY: true, cell: max(g.DX, g.DY)}
@@ -35,10 +48,10 @@ func newFrame(s *survey.Survey) frame {
 		f.minY, f.maxY = -step/2, step/2
 		f.titleX, f.tickY, f.lineX = "distance along the line (µm)", false, true
 	case g.Rows == 1 && g.Cols > 1:
-		f.titleX += " at y = " + Significant(g.Y0, 4) + " µm"
+		f.titleX += " at y = " + place(g.Y0) + " µm"
 		f.tickY, f.lineX = false, true
 	case g.Cols == 1 && g.Rows > 1:
-		f.titleX, f.tickX, f.lineY = "x = "+Significant(g.X0, 4)+" µm", false, true
+		f.titleX, f.tickX, f.lineY = "x = "+place(g.X0)+" µm", false, true
 	}
 	return f
 }

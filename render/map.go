@@ -5,8 +5,9 @@ import (
 	"bandgrid/render/plot"
 )
 
-// leastWidth is the narrowest figure whose text has its own size, mm; text of a narrower one shrinks with it.
-const leastWidth = 62
+// leastWidth is the width of the narrowest figure, in ems of its body text, whose text has its own size; text of a narrower one
+// shrinks with it.
+const leastWidth = 21
 
 // Map draws one quantity over the stage, x and y to one scale, row 0 at the bottom. Cells that were not measured are hatched,
 // those without a value grey; the key names both.
@@ -16,7 +17,7 @@ func Map(s *survey.Survey, quantity string, opt Options) (*plot.Figure, error) {
 		return nil, err
 	}
 	st := plot.Light(opt.FontPt)
-	width := max(opt.width(), leastWidth)
+	width := max(opt.width(), leastWidth*st.Body)
 	inner := width - 2*st.Margin
 	p := newPanel(c, st, inner, 1.15*inner, "")
 	f := &plot.Figure{W: width, Ground: st.Ground, DPI: opt.dpi(), Meta: c.meta("Map")}

@@ -38,7 +38,7 @@ func newPanel(c *cells, st plot.Style, w, h float64, letter string) *panel {
 
 func layPanel(c *cells, st plot.Style, w, h float64, letter string, below bool) *panel {
 	p := &panel{cells: c, st: st, frame: newFrame(c.s), keys: c.keys(), stacked: below, letter: letter}
-	if !discrete(c.q.Name) {
+	if !discrete(c.q.Name) && c.count[valued] > 0 {
 		p.ticks = plot.MakeTicks(c.low, c.high, 6)
 	}
 	p.title = p.ticks.Axis(c.title, c.q.Unit)
@@ -106,7 +106,11 @@ func (p *panel) layTitle(w float64) (height float64) {
 		indent = 1.2 * p.st.Title
 	}
 	p.lines = plot.Wrap(p.title, p.st.Title, w-indent, true)
-	return float64(len(p.lines))*1.25*p.st.Title + 0.45*p.st.Body
+	overhang := 0.0 // of the y axis title over a flat map
+	if p.frame.tickY {
+		overhang = max(0, (plot.TextWidth(p.y.Axis("y", "um"), p.st.Body, false)-p.box.H)/2)
+	}
+	return float64(len(p.lines))*1.25*p.st.Title + 0.45*p.st.Body + overhang
 }
 
 // sideWidth is that of the colour bar with its labels, or of the key, beside the map.
@@ -139,6 +143,24 @@ func (p *panel) axisHeight() float64 {
 	return h
 }
 
+// titleX is the title of the x axis; where the map's short side is drawn wider than to scale it says so.
+func (p *panel) titleX() string {
+	title := p.frame.titleX
+	if p.x.Exp != 0 && !p.frame.lineX {
+		title = p.x.Axis("x", "um")
+	}
+	if p.frame.lineX || p.frame.lineY {
+		return title
+	}
+	switch stretch := p.box.H / p.frame.height() * p.frame.width() / p.box.W; {
+	case stretch > 1.05:
+		title += ", y stretched " + Significant(stretch, 2) + "×"
+	case stretch < 0.95:
+		title += ", stretched " + Significant(1/stretch, 2) + "×"
+	}
+	return title
+}
+
 // scaleLength returns the length of the scale bar, um, about a quarter of the map.
 func (p *panel) scaleLength() float64 {
 	length := plot.Step(p.frame.width() / 5)
@@ -165,7 +187,7 @@ func (p *panel) scaleWidth() float64 {
 
 // scaleRow tells whether the scale bar does not fit beside the axis title.
 func (p *panel) scaleRow() bool {
-	return plot.TextWidth(p.frame.titleX, p.st.Body, false)+p.scaleWidth()+1.5*p.st.Body > p.box.W
+	return plot.TextWidth(p.titleX(), p.st.Body, false)+p.scaleWidth()+1.5*p.st.Body > p.box.W
 }
 
 // height of the panel as laid out.

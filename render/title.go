@@ -1,9 +1,11 @@
-// Package render makes the figures of a survey: [Map], [Histogram], [Overview], and [Figures] for the set that a report shows. It
+// Package render makes the figures of a survey: [Map], [Histogram], [Overview], and [Standard] for the set that a report shows. It
 // draws with render/plot and render/palette and knows no solver.
 package render
 
 import (
 	"strings"
+	"unicode"
+	"unicode/utf8"
 
 	"bandgrid/mapio/survey"
 	"bandgrid/render/palette"
@@ -48,7 +50,8 @@ func Title(q *survey.Quantity) string {
 	}
 	if d := strings.TrimSpace(q.Description); d != "" {
 		first, _, _ := strings.Cut(d, ";")
-		return strings.ToUpper(first[:1]) + first[1:]
+		r, size := utf8.DecodeRuneInString(first)
+		return string(unicode.ToUpper(r)) + first[size:]
 	}
 	return strings.ReplaceAll(q.Name, "_", " ")
 }

@@ -84,7 +84,7 @@ func (r *Ramp) fill(path func(t float64) Lab) {
 // more, as more carbon is; the single layer, which people look for, is the brightest of the strong colours.
 var Layers = [6]color.NRGBA{
 	LCH(0.945, 0.055, 90).RGB(), // sand
-	LCH(0.81, 0.125, 204).RGB(), // turquoise
+	LCH(0.80, 0.105, 212).RGB(), // turquoise
 	LCH(0.60, 0.145, 262).RGB(), // blue
 	LCH(0.47, 0.170, 302).RGB(), // violet
 	LCH(0.34, 0.120, 2).RGB(),   // wine

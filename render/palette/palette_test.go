@@ -86,7 +86,7 @@ func TestRampsAreShown(t *testing.T) {
 			}
 		}
 	}
-	for i, p := range []Lab{LCH(0.81, 0.125, 204)} {
+	for i, p := range []Lab{LCH(0.80, 0.105, 212)} {
 		if !p.Shown() {
 			t.Errorf("layer %d cannot be shown", i+1)
 		}

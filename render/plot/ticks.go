@@ -72,8 +72,11 @@ func (t Ticks) Axis(title, unit string) string {
 	if t.Exp != 0 {
 		unit = strings.TrimSpace("10" + Superscript(strconv.Itoa(t.Exp)) + " " + unit)
 	}
-	if unit == "" {
+	switch {
+	case unit == "":
 		return title
+	case strings.HasSuffix(title, ")"):
+		return title + ", " + unit
 	}
 	return title + " (" + unit + ")"
 }

@@ -152,4 +152,3 @@ func samples() []sample {
 	}
 	return append(list, sample{"oblique", oblique, "2d_width", Options{}}, sample{"far", far, "g_position", Options{}}, sample{"classes", nine, "layer_number", Options{}})
 }
-
