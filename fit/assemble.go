@@ -11,20 +11,27 @@ import (
 // ErrNoPixel says that a run held no pixel that could be used.
 var ErrNoPixel = errors.New("no pixel could be read")
 
-// Problems returns what was wrong with single pixels, in order of acquisition, at most limit of them, and how many there were.
-func (f *Fits) Problems(limit int) (list []*scan.InputError, total int) {
+// Unreadable says which pixels of a run could not be read.
+type Unreadable struct {
+	Pixels int
+	First  []*scan.InputError // the first of them, in order of acquisition
+}
+
+// Unreadable lists the pixels that could not be read, at most limit of them one by one.
+func (f *Fits) Unreadable(file string, limit int) (u Unreadable) {
 	first := 0
 	for _, s := range f.slabs {
 		for _, p := range s.problems {
-			if total++; len(list) < limit {
+			if u.Pixels++; len(u.First) < limit {
 				at := *p
-				at.Pixel += first
-				list = append(list, &at)
+				at.File = file
+				at.Pixel += first // counted within its block so far
+				u.First = append(u.First, &at)
 			}
 		}
 		first += len(s.x)
 	}
-	return list, total
+	return u
 }
 
 // Len is the number of pixels found in the run, readable or not.

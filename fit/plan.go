@@ -207,21 +207,4 @@ func (p *Plan) channelCount() (n int) {
 	return n
 }
 
-// BandNames lists the bands of the recipe in the order of the status bits.
-func (p *Plan) BandNames() (names []string) {
-	for _, w := range p.Recipe.Windows {
-		for _, b := range w.Bands {
-			names = append(names, b.Name)
-		}
-	}
-	return names
-}
-
-// Covers tells whether the plan fits a band of that name.
-func (p *Plan) Covers(band string) bool {
-	return slices.ContainsFunc(p.windows, func(w windowPlan) bool {
-		return slices.ContainsFunc(w.Bands, func(b Band) bool { return b.Name == band })
-	})
-}
-
 var nan = math.NaN()

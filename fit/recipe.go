@@ -116,6 +116,16 @@ func ReadRecipe(r io.Reader) (Recipe, error) {
 	return recipe, recipe.Check()
 }
 
+// BandNames lists the recipe's bands in the order of their status bits.
+func (r Recipe) BandNames() (names []string) {
+	for _, w := range r.Windows {
+		for _, b := range w.Bands {
+			names = append(names, b.Name)
+		}
+	}
+	return names
+}
+
 var quantityName = regexp.MustCompile(`^[a-z0-9][a-z0-9_]{0,39}$`)
 
 // Check returns an error that names the first field that makes no sense, or nil.

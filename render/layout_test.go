@@ -83,7 +83,7 @@ func TestEqualAspect(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		p := newPanel(c, plot.Light(0), 110, 125, "")
+		p := newPanel(c, plot.Light(0), 110, 180, "")
 		stretch := p.box.H / p.frame.height() * p.frame.width() / p.box.W
 		thin := min(p.box.W, p.box.H) < 2.3*p.st.Body
 		if !thin && !(stretch > 0.999 && stretch < 1.001) {

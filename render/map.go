@@ -19,7 +19,7 @@ func Map(s *survey.Survey, quantity string, opt Options) (*plot.Figure, error) {
 	st := plot.Light(opt.FontPt)
 	width := max(opt.width(), leastWidth*st.Body)
 	inner := width - 2*st.Margin
-	p := newPanel(c, st, inner, 1.15*inner, "")
+	p := newPanel(c, st, inner, 2.2*inner, "")
 	f := &plot.Figure{W: width, Ground: st.Ground, DPI: opt.dpi(), Meta: c.meta("Map")}
 	drawn := p.draw(inner, opt.Outlines)
 	f.H = drawn.H + 2*st.Margin

@@ -54,7 +54,7 @@ func layPanel(c *cells, st plot.Style, w, h float64, letter string, below bool) 
 		if below {
 			bottom += p.belowHeight(w - left)
 		}
-		p.box = p.frame.fit(plot.Box{X: left, Y: top, W: w - left - right, H: h - top - bottom}, st)
+		p.box = p.frame.fit(plot.Box{X: left, Y: top, W: w - left - right, H: min(h-top-bottom, 1.15*w)}, st) // a page is hardly higher than wide
 		p.width = left + p.box.W + right
 		if below {
 			p.width = max(p.width, left+p.barLength(w-left), left+p.flowWidth(w-left))

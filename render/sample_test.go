@@ -75,6 +75,12 @@ func flake(cols, rows int) *survey.Survey {
 	for k, name := range names {
 		s.Put(survey.Quantity{Name: name, Unit: units[k], Description: "made for a test", Values: values[k]})
 	}
+	s.Regions = []survey.Region{{ID: "all", Layer: nan, Pixels: n}, {ID: "1", Layer: 1}}
+	for i, v := range values[6] {
+		if v == 1 {
+			s.Regions[1].Cells = append(s.Regions[1].Cells, int32(i))
+		}
+	}
 	s.Pixels = survey.Pixels{Expected: n, Read: n - s.Pixels.Missing, Fitted: n - s.Pixels.Missing, Missing: s.Pixels.Missing}
 	return s
 }

@@ -2,16 +2,373 @@ package main
 
 import (
 	"context"
+	"encoding/json"
 	"errors"
+	"fmt"
+	"maps"
+	"os"
+	"path/filepath"
+	"runtime/debug"
+	"strings"
+	"time"
 
 	"github.com/spf13/pflag"
+
+	"bandgrid/fit"
+	"bandgrid/fit/carbon"
+	"bandgrid/fit/region"
+	"bandgrid/mapio"
+	"bandgrid/mapio/scan"
+	"bandgrid/mapio/survey"
 )
 
 var surveyVerb = verb{
 	name:  "survey",
 	usage: "RUN...",
 	short: "fit every pixel of a run, interpret, and write maps, regions, figures and a report",
-	setup: func(*pflag.FlagSet) func(context.Context, []string, streams) error {
-		return func(context.Context, []string, streams) error { return errors.ErrUnsupported }
+	long: `The main job. RUN is the text file that the microscope left, as it is, gzip or zstd compressed, or - for standard
+input. The result is a folder beside it, named after it, with .survey at the end: report.html is the page to
+open first, figures/ holds the maps as pictures, maps/ the numbers for numpy.load, regions.csv the statistics.
+
+Example:
+  bandgrid survey examples/flake/overnight.txt.zst
+
+Exit status: 0 done; 1 could not do it; 2 wrong usage; 3 done, but part of the input was unusable, and the
+report says which; 130 interrupted.`,
+	setup: func(flags *pflag.FlagSet) func(context.Context, []string, streams) error {
+		var o surveyOptions
+		o.add(flags)
+		return o.run
 	},
+}
+
+type surveyOptions struct {
+	out         string
+	laser       float64
+	recipe      string
+	printRecipe bool
+	columns     []string
+	with        string
+	spot        float64
+	film        string
+	oxide       float64
+	minArea     float64
+	gain        float64
+	readNoise   float64
+	saturation  float64
+	notes       map[string]string
+	table       bool
+	workers     int
+	force       bool
+	quiet       bool
+}
+
+func (o *surveyOptions) add(fs *pflag.FlagSet) {
+	fs.StringVarP(&o.out, "output", "o", "", "survey `folder` (default: beside the run, named after it)")
+	fs.Float64Var(&o.laser, "laser", 0, "laser line in `nm`, where the run does not say")
+	fs.StringSliceVar(&o.columns, "columns", nil, "names of the run's columns, where guessing fails: `x,y,shift,counts`; - for one to ignore, x:mm for a unit")
+	fs.StringVar(&o.with, "with", "", "second `run` over the same grid that holds the other window")
+	fs.StringVar(&o.recipe, "recipe", "", "JSON `file` with windows and bands (default: the built-in recipe for graphene)")
+	fs.BoolVar(&o.printRecipe, "print-recipe", false, "print the recipe, built-in or given, and do nothing else")
+	fs.StringVar(&o.film, "film", "unknown", "where the film comes from: `unknown`, exfoliated or grown; unknown is the cautious one")
+	fs.Float64Var(&o.oxide, "oxide", 0, "thickness of the substrate's oxide in `nm`, where known")
+	fs.Float64Var(&o.spot, "spot", 0, "laser spot's full width at half maximum in `um` (default: one step)")
+	fs.Float64Var(&o.minArea, "min-area", 0, "smallest region in `um2`; smaller specks and holes are absorbed (default: four pixels)")
+	fs.Float64Var(&o.gain, "gain", 0, "detector gain in `electrons` per count (default: from each pixel's residuals)")
+	fs.Float64Var(&o.readNoise, "read-noise", 0, "scatter of a channel without light, in `counts`; with --gain")
+	fs.Float64Var(&o.saturation, "saturation", 0, "`counts` from which on a channel is full and left out")
+	fs.StringToStringVar(&o.notes, "note", nil, "`KEY=VALUE` for survey and report: sample, power, exposure ...")
+	fs.BoolVar(&o.table, "table", false, "write pixels.csv too: all quantities, a row per pixel")
+	fs.IntVar(&o.workers, "workers", 0, "`number` of workers (default: one per processor)")
+	fs.BoolVarP(&o.force, "force", "f", false, "replace a survey that is already there")
+	fs.BoolVarP(&o.quiet, "quiet", "q", false, "no progress, no summary")
+}
+
+func (o *surveyOptions) check(runs []string) error {
+	switch {
+	case len(runs) == 0:
+		return errors.New("no run given; bandgrid survey --help shows an example")
+	case o.out != "" && len(runs) > 1:
+		return errors.New("-o names one survey, but there are several runs; leave it out or give one run")
+	case o.with != "" && len(runs) > 1:
+		return errors.New("--with goes with one run, but there are several")
+	case o.out == "" && runs[0] == "-":
+		return errors.New("standard input has no name; say with -o where the survey goes")
+	case o.laser != 0 && !(o.laser >= 200 && o.laser <= 2000):
+		return fmt.Errorf("--laser %g: a wavelength in nm between 200 and 2000 is needed", o.laser)
+	case o.gain < 0 || o.readNoise < 0 || o.saturation < 0 || o.spot < 0 || o.minArea < 0 || o.oxide < 0 || o.workers < 0:
+		return errors.New("gain, read noise, saturation, spot, oxide, area and workers cannot be negative")
+	case o.readNoise > 0 && o.gain == 0:
+		return errors.New("--read-noise is in counts beside shot noise, so it needs --gain")
+	}
+	return carbon.Settings{Film: o.film}.Check()
+}
+
+func (o *surveyOptions) run(ctx context.Context, runs []string, std streams) error {
+	recipe, err := o.readRecipe()
+	if err != nil {
+		return err
+	}
+	if o.printRecipe {
+		text, err := json.MarshalIndent(recipe, "", "  ")
+		if err != nil {
+			return err
+		}
+		_, err = fmt.Fprintf(std.out, "%s\n", text)
+		return err
+	}
+	if err := o.check(runs); err != nil {
+		return usageError{err}
+	}
+	// Results stay in memory until the end, and little else does: a smaller heap costs hardly any time here.
+	defer debug.SetGCPercent(debug.SetGCPercent(40))
+	var failed error
+	for _, run := range runs {
+		err := o.one(ctx, run, recipe, std)
+		if err != nil && len(runs) > 1 {
+			err = fmt.Errorf("%s: %w", run, err)
+		}
+		failed = errors.Join(failed, err)
+		if ctx.Err() != nil {
+			break
+		}
+	}
+	return failed
+}
+
+func (o *surveyOptions) readRecipe() (fit.Recipe, error) {
+	if o.recipe == "" {
+		return fit.Graphene(), nil
+	}
+	f, err := os.Open(o.recipe)
+	if err != nil {
+		return fit.Recipe{}, err
+	}
+	defer f.Close()
+	recipe, err := fit.ReadRecipe(f)
+	if err != nil {
+		return recipe, fmt.Errorf("%s: %w", o.recipe, err)
+	}
+	return recipe, nil
+}
+
+// folder names the survey of a run: beside it, without the extensions of text and compression.
+func (o *surveyOptions) folder(run string) string {
+	if o.out != "" {
+		return o.out
+	}
+	dir, name := filepath.Split(run)
+	for _, extension := range []string{".gz", ".zst", ".zstd"} {
+		name = strings.TrimSuffix(name, extension)
+	}
+	if ext := filepath.Ext(name); ext != "" && ext != name {
+		name = strings.TrimSuffix(name, ext)
+	}
+	return filepath.Join(dir, name+".survey")
+}
+
+// one makes the survey of one run.
+func (o *surveyOptions) one(ctx context.Context, run string, recipe fit.Recipe, std streams) error {
+	start := time.Now()
+	inputs, err := o.openAll(run, recipe, std)
+	defer inputs.close()
+	if err != nil {
+		return err
+	}
+	folder, err := survey.Create(o.folder(run), o.force)
+	if err != nil {
+		return err
+	}
+	s, broken, stopped := o.fitAll(ctx, inputs, std)
+	if s == nil {
+		return errors.Join(stopped, folder.Abandon())
+	}
+	o.describe(s, inputs, broken == nil && stopped == nil)
+	if err := o.interpret(s, recipe); err != nil {
+		return errors.Join(err, folder.Abandon())
+	}
+	if err := (bundle{recipe, o.table, o.workers}).write(folder.Path(), s); err != nil {
+		return errors.Join(err, folder.Abandon())
+	}
+	if stopped != nil {
+		return fmt.Errorf("%w; what was fitted until then is in %s", stopped, folder.Path())
+	}
+	if err := folder.Commit(); err != nil {
+		return err
+	}
+	if !o.quiet {
+		summary(std.out, s, o.folder(run), time.Since(start))
+	}
+	if broken != nil {
+		return fmt.Errorf("%w: %w; the survey in %s says what is missing", errPartly, broken, o.folder(run))
+	}
+	return nil
+}
+
+// inputs are the runs of one survey, opened, with the plans to fit them by. The second is there only with --with.
+type inputs struct {
+	first, second *scan.Scan
+	plan, rest    *fit.Plan
+}
+
+func (in inputs) close() {
+	for _, sc := range []*scan.Scan{in.first, in.second} {
+		if sc != nil {
+			sc.Close()
+		}
+	}
+}
+
+// openAll opens the runs and plans their fits. What it returns must be closed, also after an error.
+func (o *surveyOptions) openAll(run string, recipe fit.Recipe, std streams) (in inputs, err error) {
+	options := mapio.Options{Laser: o.laser, Columns: o.columns, Stdin: std.in}
+	if in.first, err = mapio.Open(run, options); err != nil {
+		return in, err
+	}
+	if in.first.Laser == 0 {
+		return in, &scan.InputError{File: in.first.File, Pixel: -1,
+			What:   "the run does not say with which laser line it was measured, and the bands move with it",
+			Remedy: "give it with --laser, for instance --laser 532"}
+	}
+	detector := fit.Detector{Gain: o.gain, ReadNoise: o.readNoise, Saturation: o.saturation}
+	in.plan, err = fit.NewPlan(recipe, in.first.Axis, in.first.Laser, detector)
+	if err != nil {
+		return in, &scan.InputError{File: in.first.File, Pixel: -1, What: "its spectra cannot be fitted", Err: err,
+			Remedy: "check the axis and its unit (--columns), the laser line (--laser) and the recipe's windows"}
+	}
+	if o.with == "" {
+		return in, nil
+	}
+	if in.second, err = mapio.Open(o.with, options); err != nil {
+		return in, err
+	}
+	if len(in.plan.Lacks) == 0 {
+		return in, usageError{fmt.Errorf("%s already covers all windows of the recipe; %s has nothing to add", in.first.File, in.second.File)}
+	}
+	if l := in.second.Laser; l != 0 && l != in.first.Laser {
+		return in, &scan.InputError{File: in.second.File, Pixel: -1,
+			What:   fmt.Sprintf("its laser line is %g nm, that of %s %g nm", l, in.first.File, in.first.Laser),
+			Remedy: "give the right one for both with --laser"}
+	}
+	if in.rest, err = in.plan.Rest(in.second.Axis, detector); err != nil {
+		return in, &scan.InputError{File: in.second.File, Pixel: -1, What: "its spectra cannot be fitted", Err: err,
+			Remedy: "it should hold the windows that the first run lacks: " + strings.Join(in.plan.Lacks, ", ")}
+	}
+	return in, nil
+}
+
+// fitAll fits the runs and joins them. broken says what part of the input was unusable though there is a survey. stopped says
+// why the work ended early; then the survey is nil, or what was fitted before an interruption.
+func (o *surveyOptions) fitAll(ctx context.Context, in inputs, std streams) (s *survey.Survey, broken, stopped error) {
+	s, broken, stopped = o.fitRun(ctx, in.first, in.plan, std)
+	lacks := in.plan
+	if in.second != nil && stopped == nil {
+		var other *survey.Survey
+		var brokenToo error
+		other, brokenToo, stopped = o.fitRun(ctx, in.second, in.rest, std)
+		broken = errors.Join(broken, brokenToo)
+		if other == nil {
+			return nil, nil, stopped
+		}
+		s.Warnings = append(s.Warnings, other.Warnings...)
+		if err := fit.Join(s, other, in.plan, in.rest); err != nil {
+			return nil, nil, &scan.InputError{File: in.second.File, Pixel: -1, What: "it does not go with " + in.first.File, Err: err,
+				Remedy: "both must be measured over the same grid"}
+		}
+		lacks = in.rest
+	}
+	if s != nil {
+		low, high := lacks.Axis.Range()
+		for _, name := range lacks.Lacks {
+			s.Warnings = append(s.Warnings, fmt.Sprintf("the axis, %.0f to %.0f cm-1, does not cover the recipe's window %s; its quantities are missing", low, high, name))
+		}
+		s.Warnings = append(s.Warnings, in.plan.Warnings...)
+	}
+	return s, broken, stopped
+}
+
+// fitRun fits one run; see fitAll.
+func (o *surveyOptions) fitRun(ctx context.Context, sc *scan.Scan, plan *fit.Plan, std streams) (s *survey.Survey, broken, stopped error) {
+	run := fit.RunOptions{Workers: o.workers}
+	if std.terminal && !o.quiet {
+		p := startProgress(time.Second/2, sc.Progress, terminalLine(std.err))
+		run.Progress = p.Add
+		defer fmt.Fprintln(std.err)
+		defer p.Close()
+	}
+	fits, ended := fit.Run(ctx, sc, plan, run)
+	if ended != nil && ctx.Err() == nil { // the run could not be read to its end; what came before counts
+		broken, ended = ended, nil
+	}
+	unreadable := fits.Unreadable(sc.File, maxListed)
+	if unreadable.Pixels > 0 {
+		if 2*unreadable.Pixels > fits.Len() {
+			return nil, nil, fmt.Errorf("%w (%d of %d pixels could not be read; if the columns were guessed wrong, name them with --columns)",
+				unreadable.First[0], unreadable.Pixels, fits.Len())
+		}
+		broken = errors.Join(broken, fmt.Errorf("%d of %d pixels could not be read, the first: %w", unreadable.Pixels, fits.Len(), unreadable.First[0]))
+	}
+	s, err := fits.Survey()
+	switch {
+	case err != nil && ended != nil:
+		return nil, nil, ended
+	case err != nil && broken != nil:
+		return nil, nil, broken
+	case err != nil:
+		return nil, nil, &scan.InputError{File: sc.File, Pixel: -1, What: "there is no map in it", Err: err,
+			Remedy: "check that data follow its header and that the columns are named right (--columns)"}
+	}
+	if len(s.Warnings) > 0 { // it ends in mid-line
+		broken = errors.Join(broken, &scan.InputError{File: sc.File, Pixel: -1, What: s.Warnings[0]})
+	}
+	if broken != nil {
+		s.Warnings = append(s.Warnings, strings.Split(broken.Error(), "\n")...)
+	}
+	for _, p := range unreadable.First[min(1, len(unreadable.First)):] {
+		s.Warnings = append(s.Warnings, p.Error())
+	}
+	if ended != nil {
+		s.Warnings = append(s.Warnings, "the survey was interrupted before the end of the run")
+	}
+	return s, broken, ended
+}
+
+// maxListed is how many unreadable pixels the report lists one by one.
+const maxListed = 20
+
+// describe fills in where the survey comes from.
+func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
+	s.Program = "bandgrid " + version()
+	for _, sc := range []*scan.Scan{in.first, in.second} {
+		if sc != nil {
+			read, _ := sc.Progress()
+			s.Runs = append(s.Runs, survey.RunFile{Name: filepath.Base(sc.File), SHA256: sc.Digest(), Bytes: read, Format: sc.Format})
+		}
+	}
+	low, high := in.first.Axis.Range()
+	s.Laser = in.first.Laser
+	s.Axis = survey.AxisInfo{Channels: len(in.first.Axis), From: low, To: high}
+	s.Recipe, _ = json.Marshal(in.plan.Recipe) // a recipe that was read or built in can be written
+	s.Complete = complete
+	s.Settings = map[string]any{"film": o.film}
+	for name, v := range map[string]float64{
+		"oxide_nm": o.oxide, "spot_um": o.spot, "min_area_um2": o.minArea,
+		"gain_e_per_count": o.gain, "read_noise_counts": o.readNoise, "saturation_counts": o.saturation,
+	} {
+		if v > 0 {
+			s.Settings[name] = v
+		}
+	}
+	s.Notes = map[string]string{}
+	maps.Copy(s.Notes, in.first.Notes)
+	maps.Copy(s.Notes, o.notes)
+}
+
+// interpret adds what follows from the bands: ratios, layer number, regions.
+func (o *surveyOptions) interpret(s *survey.Survey, recipe fit.Recipe) error {
+	steps := append(fit.RatioSteps(recipe), carbon.Steps(carbon.Settings{Film: o.film, Oxide: o.oxide})...)
+	if err := fit.Apply(s, steps); err != nil {
+		return err
+	}
+	return region.Find(s, region.Options{MinArea: o.minArea, Ring: o.spot})
 }

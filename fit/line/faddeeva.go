@@ -194,23 +194,28 @@ func faddeeva2(x, y float64) (w, w1, w2 complex128) {
 	return w, w1, w2
 }
 
-// sum2 returns Σ weight · iz/(z²-t²) and its first two derivatives, -i Σ weight (z²+t²)/(z²-t²)² and
-// 2iz Σ weight (z²+3t²)/(z²-t²)³.
+// sum2 returns Σ weight · iz c with c = 1/(z²-t²) and its first two derivatives, -i Σ weight (c + 2t²c²) and
+// 2iz Σ weight (c² + 4t²c³). Written in real numbers it takes half the time.
 func (p poles) sum2(x, y float64) (w, w1, w2 complex128) {
 	a, b, r2 := (x-y)*(x+y), 2*x*y, x*x+y*y // z² = a+ib
-	var s, st float64
-	var s1, s2 complex128
+	var s, st, re, im, re1, im1, re2, im2 float64
 	for _, pole := range p {
 		d := a - pole.t2
 		inv := 1 / (d*d + b*b)
 		q := pole.weight * inv
 		s += q
 		st += q * pole.t2
-		c := complex(d*inv, -b*inv)
-		f := complex(d*q, -b*q) * c
-		s1 += f * complex(a+pole.t2, b)
-		s2 += f * c * complex(a+3*pole.t2, b)
+		cr, ci := d*inv, -b*inv
+		fr, fi := pole.weight*(cr-ci)*(cr+ci), 2*pole.weight*cr*ci // weight c²
+		gr, gi := pole.t2*fr, pole.t2*fi
+		re += d*q + 2*gr
+		im += 2*gi - b*q
+		re1 += fr
+		im1 += fi
+		re2 += gr*cr - gi*ci
+		im2 += gr*ci + gi*cr
 	}
 	w = complex(y*(r2*s+st), x*(r2*s-st)) // as sum, to the last bit
-	return w, times(s1, -1), times(complex(x, y)*s2, 2)
+	re1, im1 = 2*(re1+4*re2), 2*(im1+4*im2)
+	return w, complex(im, -re), complex(-x*im1-y*re1, x*re1-y*im1)
 }

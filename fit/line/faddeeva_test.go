@@ -91,6 +91,47 @@ func TestFaddeevaAgainstMpmathAndSciPy(t *testing.T) {
 	}
 }
 
+func TestFaddeevaDerivativesOnTheRealAxis(t *testing.T) {
+	// There Re w = exp(-x²), so Re w' = -2x exp(-x²) and Re w" = (4x²-2) exp(-x²); the poles alone give 0. Inside, the recurrences
+	// are exact but for roundings; outside, x² is rounded once more in the reference: 26² · 2^-53.
+	for x := 0.1; x < 26; x += 0.07 {
+		e := math.Exp(-x * x)
+		w, w1, w2 := faddeeva2(x, 0)
+		if !(relative(real(w), e) <= 1e-13) || !(relative(real(w1), -2*x*e) <= 1e-13) || !(math.Abs(real(w2)-(4*x*x-2)*e) <= 1e-13*(4*x*x+2)*e) {
+			t.Errorf("at %g: real parts %g, %g, %g, want %g, %g, %g", x, real(w), real(w1), real(w2), e, -2*x*e, (4*x*x-2)*e)
+		}
+	}
+}
+
+func TestFaddeevaOutside(t *testing.T) {
+	nan, inf := math.NaN(), math.Inf(1)
+	for _, z := range []complex128{complex(1, -1e-9), complex(1e9, -1), complex(nan, 1), complex(1, nan), complex(20, nan), complex(nan, nan)} {
+		if w := Faddeeva(z); real(w) == real(w) || imag(w) == imag(w) {
+			t.Errorf("w(%v) = %v, want NaN", z, w)
+		}
+	}
+	for _, z := range []complex128{complex(inf, 1), complex(-inf, 0), complex(0, inf), complex(1, inf)} {
+		if w := Faddeeva(z); cmplx.Abs(w) != 0 {
+			t.Errorf("w(%v) = %v, want 0", z, w)
+		}
+	}
+}
+
+func TestGaussHermiteMoments(t *testing.T) {
+	// A rule of n nodes integrates t^(2m) exp(-t²) exactly up to 2m = 2n-2; the weights here are 2/π times those of half the nodes.
+	for _, rule := range []poles{hermite14, hermite8, hermite4} {
+		for m := range 2 * len(rule) {
+			sum := 0.0
+			for _, pole := range rule {
+				sum += math.Pi * pole.weight * math.Pow(pole.t2, float64(m))
+			}
+			if want := math.Gamma(float64(m) + 0.5); !(relative(sum, want) <= 1e-14) { // roundings of powers up to 13
+				t.Errorf("%d nodes, moment %d: %g, want %g", 2*len(rule), 2*m, sum, want)
+			}
+		}
+	}
+}
+
 var sink float64
 
 func BenchmarkFaddeeva(b *testing.B) {

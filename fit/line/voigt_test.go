@@ -120,6 +120,14 @@ func TestVoigtLimits(t *testing.T) {
 			}
 		}
 	}
+	g, h := make([]float64, 4), make([]float64, 4)
+	FreeVoigt{}.AreaGradient(g, []float64{1, 0, 14, 14 * sqrtLn2 / (lorentzLimit * 0.999)})
+	FreeVoigt{}.AreaGradient(h, []float64{1, 0, 14, 14 * sqrtLn2 / (lorentzLimit * 1.001)})
+	for _, k := range []int{Width, GaussWidth} {
+		if !(math.Abs(g[k]/h[k]-1) <= 0.003) {
+			t.Errorf("the area's derivative %d jumps from %g to %g", k, g[k], h[k])
+		}
+	}
 	for _, p := range [][]float64{{1, 0, -1, 3}, {1, 0, 1, -3}, {1, 0, 0, 0}, {1, 0, math.NaN(), 1}, {1, 0, 1, math.NaN()}} {
 		if v, a, w := one(FreeVoigt{}, 1, p...), (FreeVoigt{}).Area(p), (FreeVoigt{}).FWHM(p); v == v || a == a || w == w && p[3] != 0 {
 			t.Errorf("widths %g and %g give %g, area %g, FWHM %g; they make no profile", p[2], p[3], v, a, w)
