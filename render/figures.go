@@ -36,7 +36,7 @@ func Standard(s *survey.Survey, opt Options) ([]Picture, error) {
 			job{name, title, altMap(s, q), func() (*plot.Figure, error) { return Map(s, name, opt) }},
 			job{name + "_histogram", title + ", histogram", altHistogram(q), func() (*plot.Figure, error) {
 				small := opt
-				small.WidthMM = 0.75 * opt.width()
+				small.WidthMM = opt.width() * 2 / 3 // the report shows them side by side at 3 to 2
 				return Histogram(s, name, small)
 			}})
 	}
