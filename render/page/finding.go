@@ -8,6 +8,7 @@ import (
 	"strconv"
 	"strings"
 
+	"bandgrid/mapio/scan"
 	"bandgrid/mapio/survey"
 )
 
@@ -50,7 +51,7 @@ func Summary(s *survey.Survey) []string {
 			continue
 		}
 		if median, spread, n := middle(m.Values, mask); n > 0 {
-			list = append(list, fmt.Sprintf("%s of %s: median %s, spread %s%s (%d pixels).", q.words, of, decimals(median, spread), significant(spread), q.unit, n))
+			list = append(list, fmt.Sprintf("%s of %s: median %s, spread %s%s (%d pixels).", q.words, of, decimals(median, spread), decimals(spread, spread), q.unit, n))
 		}
 	}
 	return list
@@ -65,6 +66,7 @@ func layerSentences(s *survey.Survey, number *survey.Quantity) (list []string) {
 	var sums [6]sum
 	undetermined := 0
 	measured := s.Map("status")
+	cell := s.Grid.CellArea()
 	for i, v := range number.Values {
 		switch {
 		case v >= 0 && v <= 5:
@@ -91,6 +93,8 @@ func layerSentences(s *survey.Survey, number *survey.Quantity) (list []string) {
 		switch {
 		case a.pixels == 0:
 			list = append(list, name+": none found.")
+		case s.Grid.Layout == scan.Points:
+			list = append(list, fmt.Sprintf("%s: %s.", name, plural(a.pixels, "point")))
 		case a.regions == 0 || !(a.area > 0):
 			list = append(list, fmt.Sprintf("%s: %s, no connected region.", name, plural(a.pixels, "pixel")))
 		default:
@@ -98,7 +102,12 @@ func layerSentences(s *survey.Survey, number *survey.Quantity) (list []string) {
 		}
 	}
 	if undetermined > 0 {
-		list = append(list, fmt.Sprintf("Undetermined: %s of %d measured.", plural(undetermined, "pixel"), undetermined+total(sums[:], func(a sum) int { return a.pixels })))
+		amount := plural(undetermined, "pixel")
+		if s.Grid.Layout == scan.Raster && cell > 0 {
+			amount = significant(cell*float64(undetermined)) + " µm²"
+		}
+		all := undetermined + total(sums[:], func(a sum) int { return a.pixels })
+		list = append(list, fmt.Sprintf("Undetermined: %s, %.1f %% of the measured pixels.", amount, 100*float64(undetermined)/float64(all)))
 	}
 	return list
 }

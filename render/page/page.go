@@ -18,6 +18,7 @@ import (
 	texttemplate "text/template"
 
 	"bandgrid/mapio/survey"
+	"bandgrid/render"
 )
 
 // A Figure is a picture in the report.
@@ -58,7 +59,7 @@ var functions = map[string]any{
 		}
 		return fmt.Sprintf("%.1f %%", 100*float64(part)/float64(whole))
 	},
-	"cell": func(s string) string { return strings.NewReplacer("|", "\\|", "\n", " ", "`", "'").Replace(s) },
+	"plain": plain, "to": decimals, "measured": render.Measured, "fence": fence,
 	"data": func(png []byte) htmltemplate.URL {
 		return htmltemplate.URL("data:image/png;base64," + base64.StdEncoding.EncodeToString(png))
 	},
@@ -127,7 +128,27 @@ func title(s *survey.Survey) string {
 	if len(s.Runs) == 0 {
 		return "Survey"
 	}
-	return "Survey of " + s.Runs[0].Name
+	var names []string
+	for _, run := range s.Runs {
+		names = append(names, run.Name)
+	}
+	return "Survey of " + strings.Join(names, " with ")
+}
+
+// markup are the characters that Markdown reads as more than themselves; a line break would end a table's row.
+var markup = strings.NewReplacer(`\`, `\\`, "|", `\|`, "*", `\*`, "_", `\_`, "`", "\\`", "[", `\[`, "]", `\]`, "#", `\#`,
+	"<", "&lt;", "&", "&amp;", "\r\n", " ", "\n", " ", "\r", " ")
+
+// plain keeps text that comes from files and users from being read as Markdown.
+func plain(text any) string { return markup.Replace(fmt.Sprint(text)) }
+
+// fence returns a code fence that text does not contain.
+func fence(text string) string {
+	f := "```"
+	for strings.Contains(text, f) {
+		f += "`"
+	}
+	return f
 }
 
 // cautions are what a reader must keep in mind before acting on the numbers.
