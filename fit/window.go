@@ -21,6 +21,7 @@ type window struct {
 	problem  *lsq.Bands
 	solver   *lsq.Solver
 	locators []*locator // per band, nil unless searched for
+	strong   []bool     // channels where a band that is searched for may have its maximum
 
 	p, lo, hi, before []float64
 	free              []bool
@@ -62,22 +63,28 @@ func newWindow(w *windowPlan, recipe *Recipe, detector Detector) *window {
 	f := func(n int) []float64 { return make([]float64, n) }
 	b := func(n int) []bool { return make([]bool, n) }
 	win := &window{
-		windowPlan: w, detector: detector, recipe: recipe, problem: problem, solver: lsq.NewSolver(params),
+		windowPlan: w, detector: detector, recipe: recipe, problem: problem, solver: lsq.NewSolver(params), strong: b(n),
 		p: f(params), lo: f(params), hi: f(params), before: f(params), free: b(params), cov: f(params * params),
 		found: b(bands), barred: b(bands), holes: b(n), skip: b(n), sharp: b(n),
 		bridged: f(n), curve: f(n), sigma: f(n), r: f(n), scratch: f(n),
 		best: saved{p: f(params), cov: f(params * params), sigma: f(n), found: b(bands), skip: b(n)},
 	}
+	spacing := (w.x[n-1] - w.x[0]) / float64(n-1)
 	for i := range win.lo {
 		win.lo[i], win.hi[i] = math.Inf(-1), math.Inf(1)
 	}
 	for k, band := range w.Bands {
 		i := problem.Band(k)
 		win.lo[i+line.Position], win.hi[i+line.Position] = max(band.Position+band.Shift[0], w.From), min(band.Position+band.Shift[1], w.To)
-		win.lo[i+line.Width], win.hi[i+line.Width] = band.Widths[0], band.Widths[1]
+		// What is narrower than two channels cannot be told from a cosmic ray. (Undersampled besides: the bound on the position's
+		// error is half as large again there.)
+		win.lo[i+line.Width], win.hi[i+line.Width] = min(max(band.Widths[0], 2*spacing), band.Width), band.Widths[1]
 		var l *locator
 		if band.Search {
 			l = newLocator(w.x, problem.Powers(), band)
+			for c, x := range w.x {
+				win.strong[c] = win.strong[c] || x >= win.lo[i+line.Position] && x <= win.hi[i+line.Position]
+			}
 		}
 		win.locators = append(win.locators, l)
 	}
@@ -101,7 +108,7 @@ func (w *window) fit(counts []float32) bool {
 		}{{0, 0.45}, {0, 2.2}, {1, 1}} {
 			w.save()
 			w.status = loaded
-			w.suspect()
+			w.suspect(true)
 			w.start(try.rank, try.scale)
 			w.refine()
 			if !(w.chi2 < w.best.chi2*0.999) {
@@ -141,12 +148,13 @@ func (w *window) load(counts []float32) bool {
 	if good < len(w.holes) {
 		w.status |= Holes
 	}
-	return good >= 2*len(w.p) && w.suspect()
+	return good >= 2*len(w.p) && w.suspect(false)
 }
 
-// suspect leaves out the holes, and the channels that look like strong spikes. It reports false where there is no noise to
-// measure by.
-func (w *window) suspect() bool {
+// suspect leaves out the holes, and the channels that look like strong spikes. Where a strong band may be, a narrow one looks
+// like a spike too, so nothing is suspected there at first: if a spike does sit on the band the fit is poor, and it is tried
+// again with all suspicions. It reports false where there is no noise to measure by.
+func (w *window) suspect(all bool) bool {
 	copy(w.skip, w.holes)
 	w.bridge()
 	for i := range w.sigma {
@@ -157,6 +165,9 @@ func (w *window) suspect() bool {
 		return false
 	}
 	if clean.Sharp(w.bridged, noise, w.skip) > 0 {
+		for i, strong := range w.strong {
+			w.skip[i] = w.skip[i] && (all || !strong || w.holes[i])
+		}
 		w.bridge()
 	}
 	for i, s := range w.skip {
@@ -236,10 +247,10 @@ func (w *window) refine() {
 		w.reweigh()
 		end := w.minimize()
 		changed := w.judge(false)
-		if w.spikes() {
+		if round > 0 && w.spikes() { // not before the strong bands are fitted
 			changed = true
 		}
-		if last := round == maxRounds; last || !changed && w.still() {
+		if last := round == maxRounds; last || round > 0 && !changed && w.still() {
 			if end == lsq.Converged && !last {
 				w.status |= Converged
 			} else {

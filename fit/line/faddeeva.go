@@ -108,17 +108,18 @@ func faddeeva(x, y float64) (re, im float64) {
 	return re + gauss(x, y), im
 }
 
-// sum returns the parts of Σ weight · iz/(z²-t²).
+// sum returns the parts of Σ weight · iz/(z²-t²). The conversions keep the compiler from fusing products and sums, here and in
+// sum1 in different ways: the value must not depend on whether derivatives are wanted.
 func (p poles) sum(x, y float64) (re, im float64) {
-	a, b, r2 := (x-y)*(x+y), 2*x*y, x*x+y*y
+	a, b, r2 := float64((x-y)*(x+y)), 2*x*y, float64(x*x)+float64(y*y)
 	var s, st float64
 	for _, pole := range p {
 		d := a - pole.t2
-		q := pole.weight * (1 / (d*d + b*b))
+		q := pole.weight * (1 / (float64(d*d) + float64(b*b)))
 		s += q
-		st += q * pole.t2
+		st += float64(q * pole.t2)
 	}
-	return y * (r2*s + st), x * (r2*s - st)
+	return float64(y * (float64(r2*s) + st)), float64(x * (float64(r2*s) - st))
 }
 
 // residue returns the trapezoidal rule for x and the parts of its residue, 2 exp(-z²)/(1+exp(-2πi(z-t)/step)) with t a point
@@ -165,57 +166,81 @@ func far(x, y float64) (w, w1, w2 complex128) {
 // times returns i·f·z.
 func times(z complex128, f float64) complex128 { return complex(-f*imag(z), f*real(z)) }
 
-// faddeeva2 returns w(x+iy) and its first two derivatives by z for x, y >= 0.
+// faddeeva1 returns w(x+iy) and its first derivative by z for x, y >= 0.
 //
-// Inside they come from w' = 2i/√π - 2zw and w" = -2w - 2zw'. For large |z| these cancel, to |z|² and |z|⁴ units in the last
-// place: outside, the sum over the poles is differentiated instead.
-func faddeeva2(x, y float64) (w, w1, w2 complex128) {
+// Inside it comes from w' = 2i/√π - 2zw. For large |z| this cancels, to |z|² units in the last place: outside, the sum over the
+// poles is differentiated instead.
+func faddeeva1(x, y float64) (w, w1 complex128) {
 	r2 := x*x + y*y
 	if r2 < inner {
 		rule, re, im := residue(x, y)
 		a, b := rule.sum(x, y)
 		re, im = re+a, im+b
-		re1 := 2 * (y*im - x*re)
-		im1 := 2 * (invSqrtPi - x*im - y*re)
-		re2 := 2 * (y*im1 - x*re1 - re)
-		im2 := -2 * (x*im1 + y*re1 + im)
-		return complex(re, im), complex(re1, im1), complex(re2, im2)
+		return complex(re, im), complex(2*(y*im-x*re), 2*(invSqrtPi-x*im-y*re))
+	}
+	rule := outer(r2)
+	if rule == nil {
+		w, w1, _ = far(x, y)
+		return w, w1
+	}
+	w, w1 = rule.sum1(x, y)
+	if g := gauss(x, y); g != 0 {
+		w += complex(g, 0)
+		w1 += complex(-2*x*g, 0)
+	}
+	return w, w1
+}
+
+// faddeeva2 returns also the second derivative, inside by w" = -2w - 2zw'.
+func faddeeva2(x, y float64) (w, w1, w2 complex128) {
+	w, w1 = faddeeva1(x, y)
+	r2 := x*x + y*y
+	if r2 < inner {
+		re, im, re1, im1 := real(w), imag(w), real(w1), imag(w1)
+		return w, w1, complex(2*(y*im1-x*re1-re), -2*(x*im1+y*re1+im))
 	}
 	rule := outer(r2)
 	if rule == nil {
 		return far(x, y)
 	}
-	w, w1, w2 = rule.sum2(x, y)
+	w2 = rule.second(x, y)
 	if g := gauss(x, y); g != 0 {
-		w += complex(g, 0)
-		w1 += complex(-2*x*g, 0)
 		w2 += complex((4*x*x-2)*g, 0)
 	}
 	return w, w1, w2
 }
 
-// sum2 returns Σ weight · iz c with c = 1/(z²-t²) and its first two derivatives, -i Σ weight (c + 2t²c²) and
-// 2iz Σ weight (c² + 4t²c³). Written in real numbers it takes half the time.
-func (p poles) sum2(x, y float64) (w, w1, w2 complex128) {
-	a, b, r2 := (x-y)*(x+y), 2*x*y, x*x+y*y // z² = a+ib
-	var s, st, re, im, re1, im1, re2, im2 float64
+// sum1 returns Σ weight · iz c with c = 1/(z²-t²) and its derivative, -i Σ weight (c + 2t²c²).
+func (p poles) sum1(x, y float64) (w, w1 complex128) {
+	a, b, r2 := float64((x-y)*(x+y)), 2*x*y, float64(x*x)+float64(y*y) // z² = a+ib
+	var s, st, re, im float64
+	for _, pole := range p {
+		d := a - pole.t2
+		inv := 1 / (float64(d*d) + float64(b*b))
+		q := pole.weight * inv
+		s += q
+		st += float64(q * pole.t2)
+		f := 2 * inv * pole.t2 // c = (d-ib) inv, 1+2t²c = 1 + f (d-ib)
+		gr, gi := 1+f*d, f*b
+		re += q * (d*gr - b*gi)
+		im += q * (b*gr + d*gi)
+	}
+	return complex(y*(float64(r2*s)+st), x*(float64(r2*s)-st)), complex(-im, -re) // the first as sum, to the last bit
+}
+
+// second returns the second derivative of sum, 2iz Σ weight (c² + 4t²c³).
+func (p poles) second(x, y float64) complex128 {
+	a, b := (x-y)*(x+y), 2*x*y
+	var re, im float64
 	for _, pole := range p {
 		d := a - pole.t2
 		inv := 1 / (d*d + b*b)
-		q := pole.weight * inv
-		s += q
-		st += q * pole.t2
-		cr, ci := d*inv, -b*inv
-		fr, fi := pole.weight*(cr-ci)*(cr+ci), 2*pole.weight*cr*ci // weight c²
-		gr, gi := pole.t2*fr, pole.t2*fi
-		re += d*q + 2*gr
-		im += 2*gi - b*q
-		re1 += fr
-		im1 += fi
-		re2 += gr*cr - gi*ci
-		im2 += gr*ci + gi*cr
+		q := pole.weight * inv * inv
+		f := 4 * inv * pole.t2
+		gr, gi := 1+f*d, f*b         // 1+4t²c, conjugate
+		cr, ci := (d-b)*(d+b), 2*d*b // c², conjugate, over inv²
+		re += q * (cr*gr - ci*gi)
+		im += q * (cr*gi + ci*gr)
 	}
-	w = complex(y*(r2*s+st), x*(r2*s-st)) // as sum, to the last bit
-	re1, im1 = 2*(re1+4*re2), 2*(im1+4*im2)
-	return w, complex(im, -re), complex(-x*im1-y*re1, x*re1-y*im1)
+	return complex(2*(x*im-y*re), 2*(x*re+y*im))
 }

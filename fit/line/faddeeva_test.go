@@ -84,9 +84,9 @@ func TestFaddeevaAgainstMpmathAndSciPy(t *testing.T) {
 	if !(re.err <= bound) || !(im.err <= bound) {
 		t.Errorf("largest relative errors %.2e at %g and %.2e at %g, bound %g", re.err, re.where, im.err, im.where, bound)
 	}
-	// wofz itself is off by 1.8e-14 and 1.2e-13 (head of the table).
+	// wofz itself is off by 5.5e-14 and 1.2e-13 (head of the table).
 	t.Logf("from wofz: %.2e at %g, %.2e at %g", sciRe.err, sciRe.where, sciIm.err, sciIm.where)
-	if !(sciRe.err <= 1.9e-14+bound) || !(sciIm.err <= 1.2e-13+bound) {
+	if !(sciRe.err <= 5.5e-14+bound) || !(sciIm.err <= 1.2e-13+bound) {
 		t.Errorf("from wofz: %.2e at %g and %.2e at %g", sciRe.err, sciRe.where, sciIm.err, sciIm.where)
 	}
 }

@@ -1,7 +1,8 @@
 // Package line holds the profiles of Raman bands and what follows from them in closed form: derivatives, areas, widths.
 //
 // A band is described by its height (counts), position (cm-1) and width (cm-1, always the full width at half maximum), in this
-// order.
+// order, then by what else its [Shape] has. With a spectrometer of known resolution the band is a [Voigt] profile, whose width
+// is that of the Lorentzian part: the natural one.
 package line
 
 import "math"

@@ -92,11 +92,12 @@ func evalVoigt(y []float64, d [][]float64, x, p []float64, gauss float64) {
 		}
 		return
 	}
+	wantG := len(d) > GaussWidth
 	for i, at := range x {
-		f, byT, byL, byG := v.at(at - x0)
+		f, byT, byL, byG := v.at(at-x0, wantG)
 		y[i] = h * f
 		d[Height][i], d[Position][i], d[Width][i] = f, -h*byT, h*byL
-		if len(d) > GaussWidth {
+		if wantG {
 			d[GaussWidth][i] = h * byG
 		}
 	}
@@ -114,7 +115,7 @@ func VoigtFWHM(lorentz, gauss float64) float64 {
 	}
 	t := ApproximateVoigtFWHM(lorentz, gauss) / 2
 	for range 8 {
-		f, slope, _, _ := v.at(t)
+		f, slope, _, _ := v.at(t, false)
 		step := (f - 0.5) / slope
 		t -= step
 		if math.Abs(step) <= 1e-9*t { // the next would be its square
@@ -134,6 +135,6 @@ func ApproximateVoigtFWHM(lorentz, gauss float64) float64 {
 // a width is made good by a step along the slope.
 func voigtFWHMGradient(lorentz, gauss float64) (byL, byG float64) {
 	v := newProfile(lorentz, gauss)
-	_, slope, byL, byG := v.at(VoigtFWHM(lorentz, gauss) / 2)
+	_, slope, byL, byG := v.at(VoigtFWHM(lorentz, gauss)/2, true)
 	return -2 * byL / slope, -2 * byG / slope
 }

@@ -142,7 +142,7 @@ func TestVoigtFWHM(t *testing.T) {
 		lorentz, gauss := 1.8*math.Pow(10, decade/2), 1.8*math.Pow(10, -decade/2)
 		w := VoigtFWHM(lorentz, gauss)
 		v := newProfile(lorentz, gauss)
-		_, slope, _, _ := v.at(w / 2)
+		_, slope, _, _ := v.at(w/2, false)
 		if miss := (v.value(w/2) - 0.5) / (slope * w / 2); !(math.Abs(miss) <= 1e-12) {
 			t.Errorf("widths %g and %g: FWHM %.15g is off by %.1e", lorentz, gauss, w, miss)
 		}
