@@ -63,6 +63,9 @@ def points():
     for x in np.arange(0, 8, 0.125):
         for y in (0, 1e-8, 0.05, 0.7):
             out.append((x + 1e-9 * (y > 0), y))
+    for x in np.arange(8.03, 26.5, 0.31):  # beside the real axis Re w is exp(-x^2), then the wing
+        for y in (0, 1e-120, 1e-30):
+            out.append((x, y))
     for radius in (7.999999, 8.000001, 15.99999, 16.00001, 173.2, 173.3, 0.99e9, 1.01e9):
         for ratio in (1e-6, 1e-4, 1e-2, 0.2, 1, 5, 1e2, 1e4, 1e6):
             x = radius / np.hypot(1, ratio)
