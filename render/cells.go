@@ -6,6 +6,7 @@ import (
 	"math"
 	"slices"
 
+	"bandgrid/mapio/scan"
 	"bandgrid/mapio/survey"
 	"bandgrid/render/palette"
 	"bandgrid/render/plot"
@@ -83,6 +84,9 @@ func newCells(s *survey.Survey, name string, opt Options) (*cells, error) {
 	n := s.Grid.Cells()
 	if n == 0 || len(q.Values) != n {
 		return nil, fmt.Errorf("%s has %d values, the grid %d cells", name, len(q.Values), n)
+	}
+	if s.Grid.Layout == scan.Points && (len(s.X) != n || len(s.Y) != n) {
+		return nil, fmt.Errorf("%d points have %d and %d coordinates", n, len(s.X), len(s.Y))
 	}
 	c := &cells{s: s, q: q, title: Title(q), state: make([]state, n), ramp: ramp(name)}
 	has := measured(s)
@@ -224,7 +228,7 @@ func (c *cells) keys() []key {
 // amount is the area of that many cells, or their number where cells have no area worth the name.
 func (c *cells) amount(count int) string {
 	area := c.s.Grid.CellArea() * float64(count)
-	if c.s.Grid.Layout != "raster" || !(area > 0) {
+	if c.s.Grid.Layout != scan.Raster || !(area > 0) {
 		if count == 1 {
 			return "1 point"
 		}

@@ -95,6 +95,62 @@ func TestUnknownQuantity(t *testing.T) {
 	}
 }
 
+func TestAwkwardGrids(t *testing.T) {
+	s := scattered(9)
+	s.X, s.Y = nil, nil
+	if _, err := Map(s, "g_position", Options{}); err == nil {
+		t.Error("points without coordinates: no error")
+	}
+	s = scattered(9)
+	for i := range s.X {
+		s.X[i], s.Y[i] = float32(nan), 3
+	}
+	stepless := flake(7, 5)
+	stepless.Grid.DX, stepless.Grid.DY = 0, 0
+	same := scattered(9)
+	for i := range same.X {
+		same.X[i], same.Y[i] = 3, 3
+	}
+	same.Grid.DX, same.Grid.DY = 0, 0
+	infinite := flake(7, 5)
+	infinite.Map("g_position").Values[17] = float32(math.Inf(1))
+	infinite.Map("g_position").Values[18] = math.MaxFloat32
+	for name, s := range map[string]*survey.Survey{"no position known": s, "no steps": stepless, "all in one place": same, "infinite": infinite} {
+		f, err := Map(s, "g_position", Options{DPI: 40})
+		if err != nil {
+			t.Errorf("%s: %v", name, err)
+			continue
+		}
+		if err := clear(f); err != nil {
+			t.Errorf("%s: %v", name, err)
+		}
+		if !(f.H > 10 && f.H < 400) {
+			t.Errorf("%s: the figure is %g mm high", name, f.H)
+		}
+		f.Image()
+	}
+}
+
+func BenchmarkStandard(b *testing.B) { // a map of 500 x 500 with everything that the report shows
+	s := flake(500, 500)
+	for b.Loop() {
+		if _, err := Standard(s, Options{Workers: 2}); err != nil {
+			b.Fatal(err)
+		}
+	}
+}
+
+func BenchmarkPoints(b *testing.B) { // 100,000 scattered points
+	s := scattered(100000)
+	for b.Loop() {
+		f, err := Map(s, "g_position", Options{})
+		if err != nil {
+			b.Fatal(err)
+		}
+		f.Image()
+	}
+}
+
 func TestBinsHoldAll(t *testing.T) {
 	for _, s := range samples() {
 		c, err := newCells(s.survey, s.quantity, s.opt)

@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"errors"
 	"fmt"
+	"math"
 	"sync"
 
 	"bandgrid/mapio/survey"
@@ -98,7 +99,8 @@ func altMap(s *survey.Survey, q *survey.Quantity) string {
 	if c.count[valued] == 0 {
 		return text + ": no pixel has a value."
 	}
-	text += fmt.Sprintf(", colours from %s to %s", Significant(c.low, 5), Significant(c.high, 5))
+	decimals := max(0, 2-int(math.Floor(math.Log10(c.high-c.low)))) // three digits of the range
+	text += fmt.Sprintf(", colours from %s to %s", plot.Number(c.low, decimals), plot.Number(c.high, decimals))
 	if u := plot.Unit(q.Unit); u != "" {
 		text += " " + u
 	}

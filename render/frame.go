@@ -41,6 +41,9 @@ func newFrame(s *survey.Survey) frame {
 		return f
 	}
 	f.minX, f.minY, f.maxX, f.maxY = g.Bounds()
+	if !(f.maxX > f.minX) || !(f.maxY > f.minY) { // a grid without steps: cells of 1 um, so that there is something to see
+		f.minX, f.minY, f.maxX, f.maxY, f.cell = g.X0-0.5, g.Y0-0.5, g.X0-0.5+float64(g.Cols), g.Y0-0.5+float64(g.Rows), 1
+	}
 	switch {
 	case g.Rise != 0:
 		step := math.Hypot(g.DX, g.Rise)

@@ -1,6 +1,7 @@
 package render
 
 import (
+	"image/color"
 	"math"
 
 	"bandgrid/mapio/scan"
@@ -246,6 +247,11 @@ func (p *panel) hatch(box plot.Box) *plot.Hatch {
 
 // drawPoints draws a disc at each place; one without a value is grey, one that was not measured an empty ring.
 func (p *panel) drawPoints(f *plot.Figure) {
+	edge := 0.6 * p.st.Stroke
+	ink := p.st.Ink
+	if len(p.state) > 5000 { // edges would hide what they surround
+		ink = color.NRGBA{}
+	}
 	radius := min(2.2, max(0.45, 0.42*p.s.Grid.DX/p.frame.width()*p.box.W))
 	for i := range p.state {
 		x, y := float64(p.s.X[i]), float64(p.s.Y[i])
@@ -253,7 +259,7 @@ func (p *panel) drawPoints(f *plot.Figure) {
 			continue
 		}
 		disc := &plot.Path{Rings: [][]plot.Point{plot.Circle(p.place(x, y), radius)}, Closed: true,
-			Fill: p.color(i), Stroke: p.st.Ink, Width: 0.6 * p.st.Stroke}
+			Fill: p.color(i), Stroke: ink, Width: edge}
 		if p.state[i] == missing {
 			disc.Fill, disc.Stroke = palette.Missing, palette.MissingLine
 		}
