@@ -27,7 +27,7 @@ func Histogram(s *survey.Survey, quantity string, opt Options) (*plot.Figure, er
 	}
 	st := plot.Light(opt.FontPt)
 	width := max(opt.width(), leastWidth*st.Body)
-	f := &plot.Figure{W: width, H: 0.72 * width, Ground: st.Ground, DPI: opt.dpi(), Meta: c.meta("Histogram")}
+	f := &plot.Figure{W: width, H: 0.8 * width, Ground: st.Ground, DPI: opt.dpi(), Meta: c.meta("Histogram")}
 	h := &histogram{cells: c, st: st, f: f, bins: c.bin(opt.Range)}
 	h.draw()
 	f.Scale(opt.width() / width)
@@ -35,7 +35,7 @@ func Histogram(s *survey.Survey, quantity string, opt Options) (*plot.Figure, er
 }
 
 // bin counts. The width of bins follows the rule of Freedman and Diaconis (Z. Wahrscheinlichkeitstheorie verw. Geb. 57, 453
-// (1981); from memory), rounded up to a value that ticks can meet, so that there are about 10 to 60: its rule alone is too coarse
+// (1981); from memory), rounded up to a value that ticks can meet, so that there are about 16 to 60: its rule alone is too coarse
 // where several layer numbers make several peaks. Counts have bins of whole numbers.
 func (c *cells) bin(asked [2]float64) bins {
 	if discrete(c.q.Name) {
@@ -61,7 +61,7 @@ func (c *cells) bin(asked [2]float64) bins {
 		low, high = asked[0], asked[1]
 	}
 	width := 2 * (percentile(values, 0.75) - percentile(values, 0.25)) / math.Cbrt(float64(len(values)))
-	width = plot.Step(min((high-low)/24, max((high-low)/60, width)))
+	width = plot.Step(min((high-low)/40, max((high-low)/60, width)))
 	b := bins{width: width}
 	if b.low = math.Floor(low/width) * width; whole(values) {
 		b.width = max(1, math.Round(width))

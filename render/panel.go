@@ -241,8 +241,11 @@ func (p *panel) drawCells(f *plot.Figure, outlines bool) {
 	f.Frame(p.box, p.st.Ink, p.st.Stroke)
 }
 
+// hatch marks cells that were not measured; its lines are so close that each cell shows some.
 func (p *panel) hatch(box plot.Box) *plot.Hatch {
-	return &plot.Hatch{Box: box, Ground: palette.Missing, Line: palette.MissingLine, Spacing: 0.42 * p.st.Body, Width: 0.07 * p.st.Body}
+	cell := min(p.box.W/float64(p.s.Grid.Cols), p.box.H/float64(p.s.Grid.Rows))
+	spacing := min(0.42*p.st.Body, max(0.2*p.st.Body, 0.5*cell))
+	return &plot.Hatch{Box: box, Ground: palette.Missing, Line: palette.MissingLine, Spacing: spacing, Width: 0.07 * p.st.Body}
 }
 
 // drawPoints draws a disc at each place; one without a value is grey, one that was not measured an empty ring.

@@ -59,7 +59,7 @@ var functions = map[string]any{
 		}
 		return fmt.Sprintf("%.1f %%", 100*float64(part)/float64(whole))
 	},
-	"plain": plain, "to": decimals, "measured": render.Measured, "fence": fence,
+	"plain": plain, "to": decimals, "measured": render.Measured, "fence": fence, "known": func(v float64) bool { return v == v },
 	"data": func(png []byte) htmltemplate.URL {
 		return htmltemplate.URL("data:image/png;base64," + base64.StdEncoding.EncodeToString(png))
 	},
