@@ -168,7 +168,7 @@ func (t *Text) Box() Box {
 func Wrap(text string, size, width float64, bold bool) []string {
 	var lines []string
 	line := ""
-	for _, word := range strings.Fields(text) {
+	for word := range strings.FieldsSeq(text) {
 		try := word
 		if line != "" {
 			try = line + " " + word
