@@ -216,14 +216,7 @@ func (w *window) start(rank int, scale float64) {
 	clear(w.p)
 	for k := range w.Bands {
 		w.expect(k)
-		if w.locators[k] != nil {
-			at, second := w.locators[k].best(w.bridged)
-			if rank == 1 {
-				at = second
-			}
-			i := w.problem.Band(k)
-			w.p[i+line.Position], w.p[i+line.Width] = at.position, at.width*scale
-		}
+		w.locate(k, rank, scale)
 	}
 	for i := range w.sigma {
 		w.sigma[i] = 1
@@ -233,6 +226,19 @@ func (w *window) start(rank int, scale float64) {
 	w.reweigh()
 	w.minimize()
 	w.judge(true)
+}
+
+// locate puts a band that is searched for at the best place (rank 0) or the second best.
+func (w *window) locate(k, rank int, scale float64) {
+	if w.locators[k] == nil {
+		return
+	}
+	at, second := w.locators[k].best(w.bridged)
+	if rank == 1 {
+		at = second
+	}
+	i := w.problem.Band(k)
+	w.p[i+line.Position], w.p[i+line.Width] = at.position, at.width*scale
 }
 
 func (w *window) expect(k int) {
@@ -249,6 +255,7 @@ func (w *window) refine() {
 		changed := w.judge(false)
 		if round > 0 && w.spikes() { // not before the strong bands are fitted
 			changed = true
+			w.unbar()
 		}
 		if last := round == maxRounds; last || round > 0 && !changed && w.still() {
 			if end == lsq.Converged && !last {
@@ -260,6 +267,18 @@ func (w *window) refine() {
 		}
 	}
 	w.finish()
+}
+
+// unbar gives bands a second chance once a spike is out of the way: one that sits on a band makes it too narrow to be a band.
+func (w *window) unbar() {
+	w.bridge()
+	w.status &^= AtBound
+	for k, barred := range w.barred {
+		if barred {
+			w.barred[k] = false
+			w.locate(k, 0, 1)
+		}
+	}
 }
 
 // minimize refines the free parameters at the present weights.
