@@ -14,12 +14,13 @@ import (
 type measure struct {
 	s          *survey.Survey
 	ring       float64
-	in         []bool // cells of the region
+	class      []int8 // of each cell
+	in, beside []bool // cells of the region; undetermined cells beside it
 	quantities []*survey.Quantity
 }
 
-func newMeasure(s *survey.Survey, ring float64) *measure {
-	m := &measure{s: s, ring: ring, in: make([]bool, s.Grid.Cells())}
+func newMeasure(s *survey.Survey, class []int8, ring float64) *measure {
+	m := &measure{s: s, class: class, ring: ring, in: make([]bool, len(class)), beside: make([]bool, len(class))}
 	if ring == 0 {
 		m.ring = max(s.Grid.DX, s.Grid.DY)
 	}
@@ -81,10 +82,12 @@ func (m *measure) place(r *survey.Region) {
 // use.
 //
 // The true boundary runs somewhere through the cells that touch it; each of them is covered by an unknown share. Taken as
-// uniform and independent, the share has a variance of 1/12, hence the standard error of the area.
+// uniform and independent, the share has a variance of 1/12. Undetermined cells beside the region do not count to its area, but
+// part of them may belong to it: one unknown share of them all, since the same rule left them undetermined.
 func (m *measure) outline(r *survey.Region, boundary bool) (used []int32) {
 	g := m.s.Grid
 	edge := 0
+	var doubtful []int // undetermined cells beside the region, marked in m.beside
 	r.Perimeter = 0
 	for _, c := range r.Cells {
 		touches := false
@@ -96,13 +99,21 @@ func (m *measure) outline(r *survey.Region, boundary bool) (used []int32) {
 				r.Perimeter += g.DY - g.DX
 			}
 			touches = touches || n >= 0
+			if n >= 0 && !m.beside[n] && m.class[n] == undetermined {
+				m.beside[n] = true
+				doubtful = append(doubtful, n)
+			}
 		}
 		if touches {
 			edge++
 		}
 	}
+	for _, n := range doubtful {
+		m.beside[n] = false
+	}
 	if boundary {
-		r.AreaSE = g.CellArea() * math.Sqrt(float64(edge)/12)
+		open := float64(len(doubtful))
+		r.AreaSE = g.CellArea() * math.Sqrt((float64(edge)+open*open)/12)
 	}
 	b := m.box(r.Cells)
 	half := (g.DX + g.DY) / 4

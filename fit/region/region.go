@@ -42,7 +42,7 @@ func Find(s *survey.Survey, opt Options) error {
 	}
 	class := classes(s)
 	s.Regions = s.Regions[:0]
-	m := newMeasure(s, opt.Ring)
+	m := newMeasure(s, class, opt.Ring)
 	all := make([]int32, 0, len(class))
 	for c, k := range class {
 		if k != missing {
@@ -72,14 +72,15 @@ func Find(s *survey.Survey, opt Options) error {
 // Rectangle summarises the cells whose centres lie within x0 to x1 and y0 to y1, um, under a name of its own. Its boundary is
 // drawn by hand, so no ring is left out.
 func Rectangle(s *survey.Survey, name string, x0, y0, x1, y1 float64) survey.Region {
+	class := classes(s)
 	var cells []int32
-	for c, k := range classes(s) {
+	for c, k := range class {
 		x, y := float64(s.X[c]), float64(s.Y[c])
 		if k != missing && x >= min(x0, x1) && x <= max(x0, x1) && y >= min(y0, y1) && y <= max(y0, y1) {
 			cells = append(cells, int32(c))
 		}
 	}
-	return newMeasure(s, -1).region(name, math.NaN(), cells, false)
+	return newMeasure(s, class, -1).region(name, math.NaN(), cells, false)
 }
 
 // classes returns the class of each cell.
@@ -150,8 +151,9 @@ func neighbours(c int, g scan.Grid) [4]int {
 	return n
 }
 
-// absorb gives each part smaller than least the class of the large neighbour with which it shares most edges. It goes on until
-// nothing changes, so that a speck inside a speck is absorbed too. Parts without a large neighbour stay as they are.
+// absorb gives each part smaller than least the class of the large neighbour with which it shares most edges. An undetermined
+// part is absorbed only where it lies inside one class: between two it is their boundary. This goes on until nothing changes, so
+// that a speck inside a speck is absorbed too. Parts without a large neighbour stay as they are.
 func absorb(class []int8, g scan.Grid, least int) {
 	for {
 		parts := components(class, g)
@@ -169,12 +171,22 @@ func absorb(class []int8, g scan.Grid, least int) {
 				continue
 			}
 			clear(edges)
+			around := missing // the class of the cells around, if it is one
+			mixed := false
 			for _, c := range p.cells {
 				for _, n := range neighbours(int(c), g) {
-					if n >= 0 && class[n] != missing && owner[n] != int32(i) && len(parts[owner[n]].cells) >= least {
+					if n < 0 || class[n] == missing || owner[n] == int32(i) {
+						continue
+					}
+					mixed = mixed || around != missing && class[n] != around
+					around = class[n]
+					if len(parts[owner[n]].cells) >= least {
 						edges[owner[n]]++
 					}
 				}
+			}
+			if p.class == undetermined && mixed {
+				continue
 			}
 			best := int32(-1)
 			for k, count := range edges {

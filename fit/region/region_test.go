@@ -60,7 +60,7 @@ func TestFind(t *testing.T) {
 		"0000000003")
 	want := []string{
 		"all: NaN layers, 59 pixels, 59 um2",
-		"1: 0 layers, 41 pixels, 41 um2", // with the speck of three layers and the undetermined pixel
+		"1: 0 layers, 40 pixels, 40 um2", // with the speck of three layers; the undetermined pixel lies on a boundary
 		"2: 1 layers, 12 pixels, 12 um2", // its hole of two layers absorbed
 		"3: 2 layers, 6 pixels, 6 um2",
 	}
@@ -111,6 +111,23 @@ func TestDisc(t *testing.T) {
 		if !(math.Abs(r.Inscribed-radius) <= 0.5) {
 			t.Errorf("disc of radius %g: largest inscribed circle has radius %g", radius, r.Inscribed)
 		}
+	}
+}
+
+// A boundary that the layer number leaves undetermined makes the area uncertain as a whole, not cell by cell.
+func TestUndeterminedRimWidensTheArea(t *testing.T) {
+	s := drawn(1, 1,
+		"0000000",
+		"0.....0",
+		"0.111.0",
+		"0.111.0",
+		"0.....0",
+		"0000000")
+	find(t, s, Options{})
+	r := s.Regions[slices.IndexFunc(s.Regions, func(r survey.Region) bool { return r.Layer == 1 })]
+	// Six cells, all on the boundary; ten undetermined cells share an edge with them.
+	if want := math.Sqrt((6. + 100) / 12); r.Area != 6 || !(math.Abs(r.AreaSE-want) <= 1e-12) {
+		t.Errorf("area %g ± %g, want 6 ± %g", r.Area, r.AreaSE, want)
 	}
 }
 

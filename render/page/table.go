@@ -24,6 +24,9 @@ var tableColumns = []column{
 	{"2d_position", "2D position", "cm⁻¹"}, {"2d_width", "2D width", "cm⁻¹"}, {"2d_g_ratio", "2D/G", ""},
 }
 
+// leastValues is the number of values below which a median means little: stray pixels of a region say nothing about it.
+const leastValues = 3
+
 func regionTable(s *survey.Survey) (columns []column, rows []regionRow, omitted int) {
 	for _, c := range tableColumns {
 		if s.Map(c.Quantity) != nil {
@@ -43,7 +46,7 @@ func regionTable(s *survey.Survey) (columns []column, rows []regionRow, omitted 
 		}
 		for _, c := range columns {
 			cell := statCell{math.NaN(), math.NaN()}
-			if k := slices.IndexFunc(r.Stats, func(s survey.Stat) bool { return s.Quantity == c.Quantity }); k >= 0 {
+			if k := slices.IndexFunc(r.Stats, func(s survey.Stat) bool { return s.Quantity == c.Quantity }); k >= 0 && r.Stats[k].N >= leastValues {
 				cell = statCell{r.Stats[k].Median, r.Stats[k].Spread}
 			}
 			row.Cells = append(row.Cells, cell)
