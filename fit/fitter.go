@@ -10,17 +10,19 @@ import (
 type Fitter struct {
 	plan    *Plan
 	windows []*window
-	grad    []float64
+	grad    []float64 // of a quantity by a window's parameters
+	other   []float64
 }
 
 // NewFitter returns a fitter for the plan.
 func NewFitter(plan *Plan) *Fitter {
 	f := &Fitter{plan: plan}
 	for i := range plan.windows {
-		w := newWindow(&plan.windows[i], &plan.Recipe, plan.Detector)
+		w := newWindow(&plan.windows[i], &plan.Recipe, plan.Detector, plan.noise)
 		f.windows = append(f.windows, w)
 		f.grad = append(f.grad, make([]float64, max(0, len(w.p)-len(f.grad)))...)
 	}
+	f.other = make([]float64, len(f.grad))
 	return f
 }
 
@@ -56,6 +58,10 @@ func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 		for _, r := range w.ratios {
 			f.ratio(w, r, v, se)
 		}
+		if m := w.makeups; m != nil && w.found[0] {
+			m.choose(w)
+			v[w.makeup], v[w.makeup+1] = float32(m.components), float32(m.evidence)
+		}
 	}
 	last := v[len(v)-3:]
 	if weight > 0 {
@@ -67,65 +73,55 @@ func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 
 // band stores the four quantities of a band.
 func (f *Fitter) band(w *window, k int, v, se []float32) {
-	i, c := w.problem.Band(k), w.columns[k]
-	height, width := w.p[i+line.Height], w.p[i+line.Width]
-	if w.found[k] {
-		v[c], se[c] = float32(w.p[i+line.Position]), float32(w.se(i+line.Position))
-		v[c+1], se[c+1] = float32(width), float32(w.se(i+line.Width))
-	}
-	v[c+2], se[c+2] = float32(height), float32(w.se(i+line.Height))
+	i, c, shape := w.problem.Band(k), w.columns[k], w.shapes[k]
+	p := w.values[i : i+shape.Len()]
 	g := f.gradient(len(w.p))
-	areaGradient(g[i:], 1, height, width)
-	v[c+3], se[c+3] = float32(line.Lorentzian{}.Area(height, width)), float32(w.propagate(g))
+	of := g[i : i+shape.Len()]
+	if w.found[k] {
+		v[c], se[c] = float32(p[line.Position]), float32(w.se(i+line.Position))
+		width := p[line.Width]
+		if _, free := shape.(line.FreeVoigt); free { // with the instrument's width known, the natural one is a parameter
+			width = shape.FWHM(p)
+			shape.FWHMGradient(of, p)
+		} else {
+			of[line.Width] = 1
+		}
+		v[c+1], se[c+1] = float32(width), float32(w.propagate(g))
+	}
+	v[c+2], se[c+2] = float32(p[line.Height]), float32(w.se(i+line.Height))
+	shape.AreaGradient(of, p)
+	v[c+3], se[c+3] = float32(w.area(k)), float32(w.propagate(g))
 }
 
 // ratio stores the ratio of two bands of one window, with the covariance of all their parameters. It is undefined where the
 // denominator is not found.
+//
+// A ratio of two unbiased estimates is biased by r (var(b)/b² - cov(a, b)/(ab)) to second order; that is taken out.
 func (f *Fitter) ratio(w *window, r ratioPlan, v, se []float32) {
 	if !w.found[r.den] {
 		return
 	}
+	n := len(w.p)
+	num, den := f.gradient(n), f.other[:n]
+	clear(den)
 	i, j := w.problem.Band(r.num), w.problem.Band(r.den)
-	g := f.gradient(len(w.p))
-	var ratio float64
+	var a, b float64
 	if r.area {
-		num := line.Lorentzian{}.Area(w.p[i+line.Height], w.p[i+line.Width])
-		den := line.Lorentzian{}.Area(w.p[j+line.Height], w.p[j+line.Width])
-		ratio = num / den
-		areaGradient(g[i:], 1/den, w.p[i+line.Height], w.p[i+line.Width])
-		areaGradient(g[j:], -ratio/den, w.p[j+line.Height], w.p[j+line.Width])
+		a, b = w.area(r.num), w.area(r.den)
+		w.shapes[r.num].AreaGradient(num[i:i+w.shapes[r.num].Len()], w.values[i:])
+		w.shapes[r.den].AreaGradient(den[j:j+w.shapes[r.den].Len()], w.values[j:])
 	} else {
-		den := w.p[j+line.Height]
-		ratio = w.p[i+line.Height] / den
-		g[i+line.Height] = 1 / den
-		g[j+line.Height] = -ratio / den
+		a, b = w.values[i+line.Height], w.values[j+line.Height]
+		num[i+line.Height], den[j+line.Height] = 1, 1
 	}
-	v[r.column], se[r.column] = float32(ratio), float32(w.propagate(g))
+	aa, ab, bb := w.product(num, num), w.product(num, den), w.product(den, den)
+	ratio := a / b
+	v[r.column] = float32(ratio - (ratio*bb-ab)/(b*b))
+	se[r.column] = float32(math.Sqrt(max(0, aa-2*ratio*ab+ratio*ratio*bb)) / math.Abs(b))
 }
 
 func (f *Fitter) gradient(n int) []float64 {
 	g := f.grad[:n]
 	clear(g)
 	return g
-}
-
-// areaGradient stores factor times the derivatives of a Lorentzian's area by its height and width.
-func areaGradient(g []float64, factor, height, width float64) {
-	g[line.Height] = factor * math.Pi / 2 * width
-	g[line.Width] = factor * math.Pi / 2 * height
-}
-
-// propagate returns the standard error of a function of the parameters with gradient g.
-func (w *window) propagate(g []float64) float64 {
-	n := len(w.p)
-	variance := 0.0
-	for i, gi := range g {
-		if gi == 0 {
-			continue
-		}
-		for j, gj := range g {
-			variance += gi * gj * w.cov[i*n+j]
-		}
-	}
-	return math.Sqrt(variance * w.phi)
 }

@@ -46,7 +46,10 @@ func newTestFitter(t testing.TB, axis scan.Axis, d Detector) (*Fitter, map[strin
 }
 
 // pulls collects (estimate - truth)/standard error, and the errors themselves.
-type pulls struct{ n, sum, sum2, err, err2 float64 }
+type pulls struct {
+	n, sum, sum2, err, err2 float64
+	all                     []float64
+}
 
 func (p *pulls) add(estimate, se float32, truth float64) {
 	e := float64(estimate) - truth
@@ -56,6 +59,18 @@ func (p *pulls) add(estimate, se float32, truth float64) {
 	p.sum2 += z * z
 	p.err += e
 	p.err2 += e * e
+	p.all = append(p.all, z)
+}
+
+// within is the share of pulls up to z.
+func (p *pulls) within(z float64) float64 {
+	n := 0.0
+	for _, v := range p.all {
+		if math.Abs(v) <= z {
+			n++
+		}
+	}
+	return n / p.n
 }
 
 // bias is the mean error in units of the errors' scatter. Unlike the mean pull it is not skewed where the standard error

@@ -22,22 +22,24 @@ type locator struct {
 type place struct{ position, width float64 }
 
 // newLocator makes profiles for a band of the window on its channels x.
-func newLocator(x []float64, powers [][]float64, b Band) *locator {
+func newLocator(x []float64, powers [][]float64, b Band, shape line.Shape) *locator {
 	l := &locator{n: len(x)}
 	basis := orthonormal(powers)
 	spacing := (x[len(x)-1] - x[0]) / float64(len(x)-1)
 	low := max(b.Position+b.Shift[0], x[0])
 	high := min(b.Position+b.Shift[1], x[len(x)-1])
-	profile := make([]float64, len(x))
+	profile, p := make([]float64, len(x)), make([]float64, shape.Len())
+	for j, f := range b.furthers() {
+		p[line.Len+j] = f.start
+	}
 	// A profile that is off by half its width, or by a factor 1.3 in width, still has more than 80 % of the score.
 	for width := max(b.Widths[0], 2*spacing); width <= b.Widths[1]; width *= 1.6 {
 		steps := int(math.Ceil((high-low)/(width/2))) + 1
 		for k := range steps {
 			position := low + (high-low)*(float64(k)+0.5)/float64(steps)
-			line.Lorentzian{}.Eval(profile, nil, nil, nil, x, []float64{1, position, width})
-			for _, e := range basis {
-				floats.AddScaled(profile, -floats.Dot(e, profile), e)
-			}
+			p[line.Height], p[line.Position], p[line.Width] = 1, position, width
+			shape.Eval(profile, nil, x, p)
+			project(profile, basis)
 			norm := floats.Norm(profile, 2)
 			if !(norm > 1e-6) {
 				continue

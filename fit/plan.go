@@ -6,7 +6,9 @@ import (
 	"math"
 	"slices"
 
+	"bandgrid/fit/line"
 	"bandgrid/mapio/scan"
+	"bandgrid/mapio/survey"
 )
 
 // A Detector says how the counts scatter. The zero value is a detector of which nothing is known: variance is then taken to
@@ -21,14 +23,36 @@ type Detector struct {
 // Common practice: cooled detectors read with 3 to 10 electrons.
 const unknownReadNoise = 5
 
-// variance returns the variance of a channel whose expected value is m, up to the scale if the gain is unknown.
-// (Shot noise and read noise; + 1/12 for rounding to whole counts.)
-func (d Detector) variance(m float64) float64 {
-	if d.Gain > 0 {
-		return max(m, 0)/d.Gain + d.ReadNoise*d.ReadNoise + 1./12
-	}
-	return max(m, 0) + unknownReadNoise*unknownReadNoise
+// noise is the variance of a channel against its expected value m: slope max(m, 0) + level, counts².
+type noise struct {
+	slope, level float64
+	known        bool // else the scale is a guess, and comes from each pixel's own residuals
+	// correlation of the noise of channels 1, 2 ... apart
+	correlation [lags]float64
 }
+
+// noise returns what is known beforehand: shot noise and read noise, and 1/12 for rounding to whole counts.
+func (d Detector) noise() noise {
+	if d.Gain > 0 {
+		return noise{slope: 1 / d.Gain, level: d.ReadNoise*d.ReadNoise + 1./12, known: true}
+	}
+	return noise{slope: 1, level: unknownReadNoise * unknownReadNoise}
+}
+
+func (n noise) variance(m float64) float64 { return max(m, 0)*n.slope + n.level }
+
+// inflation is by how much correlation between channels widens the variance of what is fitted to many of them: bands are wide
+// against the reach of the correlation, so all its lags count in full.
+func (n noise) inflation() float64 {
+	sum := 1.0
+	for _, r := range n.correlation {
+		sum += 2 * r
+	}
+	return max(1, sum)
+}
+
+// second is the variance of second differences over 6 times that of a channel: 1 without correlation.
+func (n noise) second() float64 { return (6 - 8*n.correlation[0] + 2*n.correlation[1]) / 6 }
 
 // Status says how a pixel's fit ended. Its bits are written to maps/status.npy and never renumbered. From AbsentShift on there
 // is a bit for each band of the recipe, in its order: the band was not found.
@@ -63,11 +87,13 @@ type Plan struct {
 	Axis     scan.Axis
 	Laser    float64 // nm
 	Detector Detector
-	Columns  []Column // what the fit gives, in order; the last three are chi2, spikes and status
-	Lacks    []string // names of the recipe's windows that the axis does not cover
-	Warnings []string // bands that are missing in windows that it does cover
+	Columns  []Column        // what the fit gives, in order; the last three are chi2, spikes and status
+	Lacks    []string        // names of the recipe's windows that the axis does not cover
+	Warnings []string        // bands that are missing in windows that it does cover
+	Learned  *survey.Learned // what the run told of itself; nil before [Plan.Learn]
 
 	windows []windowPlan
+	noise   noise
 }
 
 type windowPlan struct {
@@ -77,6 +103,11 @@ type windowPlan struct {
 	columns  []int     // first column of each band
 	bits     []int     // number of each band in the recipe
 	ratios   []ratioPlan
+	shapes   []line.Shape
+	// discrepancy of each band's shape, a fraction of its height: the recipe's, or what the run shows
+	discrepancy []float64
+	weak        []weak // what stands in for each band where it is too weak to be located
+	makeup      int    // first column of the make-up, -1 without
 }
 
 type ratioPlan struct {
@@ -109,7 +140,7 @@ func newPlan(recipe Recipe, axis scan.Axis, laser float64, detector Detector, do
 	if !(laser >= 200 && laser <= 2000) {
 		return nil, fmt.Errorf("laser line %g nm: a value between 200 and 2000 is needed", laser)
 	}
-	p := &Plan{Recipe: recipe, Axis: axis, Laser: laser, Detector: detector}
+	p := &Plan{Recipe: recipe, Axis: axis, Laser: laser, Detector: detector, noise: detector.noise()}
 	ev := photonEnergy(laser) - photonEnergy(recipe.ReferenceLaser)
 	bands := 0 // of the recipe, so far
 	for _, w := range recipe.Windows {
@@ -133,8 +164,10 @@ func newPlan(recipe Recipe, axis scan.Axis, laser float64, detector Detector, do
 			}
 			wp.bits = append(wp.bits, first+k)
 			wp.Bands = append(wp.Bands, b)
+			wp.shapes = append(wp.shapes, shapes[b.Shape](recipe.InstrumentWidth))
+			wp.discrepancy = append(wp.discrepancy, recipe.Discrepancy)
 		}
-		if params := w.Background + 1 + 3*len(wp.Bands); len(wp.Bands) == 0 || len(wp.channels) < 3*params {
+		if params := w.Background + 1 + wp.parameters(); len(wp.Bands) == 0 || len(wp.channels) < 3*params {
 			p.Lacks = append(p.Lacks, w.Name)
 			continue
 		}
@@ -155,6 +188,14 @@ func newPlan(recipe Recipe, axis scan.Axis, laser float64, detector Detector, do
 // photonEnergy returns the energy, eV, of light of that wavelength, nm. (h c = 1239.842 eV nm.)
 func photonEnergy(nm float64) float64 { return 1239.842 / nm }
 
+// parameters is the number of parameters of all bands.
+func (w *windowPlan) parameters() (n int) {
+	for _, s := range w.shapes {
+		n += s.Len()
+	}
+	return n
+}
+
 // cut finds the channels inside the window and narrows it to them.
 func (w *windowPlan) cut(axis scan.Axis) {
 	for i, v := range axis {
@@ -174,6 +215,8 @@ func (w *windowPlan) cut(axis scan.Axis) {
 }
 
 func (p *Plan) addWindow(w windowPlan) {
+	w.weaken()
+	w.makeup = -1
 	for _, b := range w.Bands {
 		w.columns = append(w.columns, len(p.Columns))
 		p.Columns = append(p.Columns,
@@ -191,6 +234,13 @@ func (p *Plan) addWindow(w windowPlan) {
 			w.ratios = append(w.ratios, ratioPlan{len(p.Columns), num, den, r.Of == "area"})
 			p.Columns = append(p.Columns, ratioColumn(r))
 		}
+	}
+	if b := w.Bands[0]; b.Makeup && len(w.Bands) == 1 {
+		w.makeup = len(p.Columns)
+		p.Columns = append(p.Columns,
+			Column{b.Name + "_components", "", "lines that describe the shape of the " + b.Name + " band best: 1, 2, or 4; not a number of layers", false},
+			Column{b.Name + "_evidence", "", "AICc difference to the next best make-up of the " + b.Name + " band", false},
+		)
 	}
 	p.windows = append(p.windows, w)
 }

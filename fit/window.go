@@ -3,6 +3,8 @@ package fit
 import (
 	"math"
 
+	"gonum.org/v1/gonum/floats"
+
 	"bandgrid/fit/clean"
 	"bandgrid/fit/line"
 	"bandgrid/fit/lsq"
@@ -17,11 +19,13 @@ import (
 type window struct {
 	*windowPlan
 	detector Detector
+	noise    noise
 	recipe   *Recipe
 	problem  *lsq.Bands
 	solver   *lsq.Solver
 	locators []*locator // per band, nil unless searched for
 	strong   []bool     // channels where a band that is searched for may have its maximum
+	makeups  *makeups   // nil where none is asked for
 
 	p, lo, hi, before []float64
 	free              []bool
@@ -31,13 +35,22 @@ type window struct {
 	bridged           []float64
 	curve, sigma, r   []float64
 	scratch           []float64
-	cov               []float64
+	cov               []float64 // of the parameters; during the fit in units of phi
 
-	phi    float64 // variance of unit weight
-	chi2   float64 // reduced
-	points int     // channels that count
+	phi    float64   // variance of unit weight; 1 when the covariance is that of the estimates
+	pure   float64   // the part of it that noise makes, without correlation
+	raw    []float64 // covariance at the optimum, in units of phi as it was in the fit
+	chi2   float64   // reduced
+	points int       // channels that count
 	status Status
 	best   saved
+
+	values []float64 // the parameters less their bias: what is reported
+	half   []float64 // square root of a covariance
+	sums   []float64 // one number per parameter
+
+	misfits      []misfit           // of each band
+	along, shift [][][modes]float64 // memory for them
 }
 
 // saved is a finished fit that another start may beat.
@@ -45,7 +58,8 @@ type saved struct {
 	p, cov, sigma []float64
 	found         []bool
 	skip          []bool
-	phi, chi2     float64
+	phi, pure     float64
+	chi2          float64
 	points        int
 	status        Status
 }
@@ -56,22 +70,28 @@ const (
 	settled = 3e-3
 )
 
-func newWindow(w *windowPlan, recipe *Recipe, detector Detector) *window {
+func newWindow(w *windowPlan, recipe *Recipe, detector Detector, noise noise) *window {
 	n, bands := len(w.x), len(w.Bands)
-	problem := lsq.NewBands(w.x, w.Background, bands)
+	problem := lsq.NewBands(w.x, w.Background, w.shapes...)
 	params := problem.Len()
 	f := func(n int) []float64 { return make([]float64, n) }
 	b := func(n int) []bool { return make([]bool, n) }
 	win := &window{
-		windowPlan: w, detector: detector, recipe: recipe, problem: problem, solver: lsq.NewSolver(params), strong: b(n),
-		p: f(params), lo: f(params), hi: f(params), before: f(params), free: b(params), cov: f(params * params),
+		windowPlan: w, detector: detector, noise: noise, recipe: recipe, problem: problem, solver: lsq.NewSolver(params), strong: b(n),
+		p: f(params), lo: f(params), hi: f(params), before: f(params), free: b(params), cov: f(params * params), raw: f(params * params),
 		found: b(bands), barred: b(bands), holes: b(n), skip: b(n), sharp: b(n),
 		bridged: f(n), curve: f(n), sigma: f(n), r: f(n), scratch: f(n),
+		values: f(params), half: f(params * params), sums: f(params),
 		best: saved{p: f(params), cov: f(params * params), sigma: f(n), found: b(bands), skip: b(n)},
 	}
 	spacing := (w.x[n-1] - w.x[0]) / float64(n-1)
 	for i := range win.lo {
 		win.lo[i], win.hi[i] = math.Inf(-1), math.Inf(1)
+	}
+	win.misfits = make([]misfit, bands)
+	for range bands {
+		win.along = append(win.along, make([][modes]float64, params))
+		win.shift = append(win.shift, make([][modes]float64, params))
 	}
 	for k, band := range w.Bands {
 		i := problem.Band(k)
@@ -81,12 +101,18 @@ func newWindow(w *windowPlan, recipe *Recipe, detector Detector) *window {
 		win.lo[i+line.Width], win.hi[i+line.Width] = min(max(band.Widths[0], 2*spacing), band.Width), band.Widths[1]
 		var l *locator
 		if band.Search {
-			l = newLocator(w.x, problem.Powers(), band)
+			l = newLocator(w.x, problem.Powers(), band, w.shapes[k])
 			for c, x := range w.x {
 				win.strong[c] = win.strong[c] || x >= win.lo[i+line.Position] && x <= win.hi[i+line.Position]
 			}
 		}
 		win.locators = append(win.locators, l)
+		for j, f := range band.furthers() {
+			win.lo[i+line.Len+j], win.hi[i+line.Len+j] = f.low, f.high
+		}
+	}
+	if w.makeup >= 0 {
+		win.makeups = newMakeups(w)
 	}
 	return win
 }
@@ -123,6 +149,7 @@ func (w *window) fit(counts []float32) bool {
 	if w.spikeChannels() > 0 {
 		w.status |= Spiked
 	}
+	w.errors()
 	return true
 }
 
@@ -237,14 +264,28 @@ func (w *window) locate(k, rank int, scale float64) {
 	if rank == 1 {
 		at = second
 	}
-	i := w.problem.Band(k)
-	w.p[i+line.Position], w.p[i+line.Width] = at.position, at.width*scale
+	at.width *= scale
+	w.put(k, at)
 }
 
-func (w *window) expect(k int) {
+// put sets band k on a place, as a band of its own.
+func (w *window) put(k int, at place) {
 	i := w.problem.Band(k)
-	w.p[i+line.Position], w.p[i+line.Width] = w.Bands[k].Position, w.Bands[k].Width
+	w.p[i+line.Position], w.p[i+line.Width] = at.position, at.width
+	for j, f := range w.Bands[k].furthers() {
+		w.p[i+line.Len+j] = f.start
+	}
+	w.problem.SetTemplate(k, nil)
 }
+
+// expect makes band k what stands in for it where it cannot be located.
+func (w *window) expect(k int) {
+	w.put(k, place{w.weak[k].position, w.weak[k].width})
+	w.problem.SetTemplate(k, w.weak[k].profile)
+}
+
+// weakly tells whether what stands in for band k is in its place.
+func (w *window) weakly(k int) bool { return w.problem.Template(k) }
 
 // refine repeats fit, judgement of bands, search for spikes and reweighting until nothing changes.
 func (w *window) refine() {
@@ -266,7 +307,14 @@ func (w *window) refine() {
 			break
 		}
 	}
-	w.finish()
+	w.pure = 1
+	if !w.noise.known {
+		// Chi-square is measured against the scatter between neighbouring channels.
+		if noise := clean.Noise(w.problem.Y, w.sigma, w.skip, w.scratch); noise > 0 {
+			w.pure = noise * noise / w.noise.second()
+			w.chi2 /= w.pure
+		}
+	}
 }
 
 // unbar gives bands a second chance once a spike is out of the way: one that sits on a band makes it too narrow to be a band.
@@ -281,15 +329,23 @@ func (w *window) unbar() {
 	}
 }
 
-// minimize refines the free parameters at the present weights.
-func (w *window) minimize() lsq.End {
+// release says which parameters are free: heights and background always, the others of bands that are found.
+func (w *window) release() {
 	for i := range w.problem.Background() {
 		w.free[i] = true
 	}
 	for k, found := range w.found {
 		i := w.problem.Band(k)
-		w.free[i+line.Height], w.free[i+line.Position], w.free[i+line.Width] = true, found, found
+		w.free[i+line.Height] = true
+		for j := 1; j < w.shapes[k].Len(); j++ {
+			w.free[i+j] = found
+		}
 	}
+}
+
+// minimize refines the free parameters at the present weights.
+func (w *window) minimize() lsq.End {
+	w.release()
 	res := w.solver.Minimize(w.problem, w.p, w.lo, w.hi, w.free, w.points, lsq.Settings{})
 	if !w.solver.Covariance(w.cov, len(w.p)) {
 		for i := range w.cov {
@@ -298,14 +354,13 @@ func (w *window) minimize() lsq.End {
 	}
 	w.chi2 = res.Sum / float64(max(w.points-res.Free, 1))
 	w.phi = w.chi2
-	if w.detector.Gain > 0 {
-		w.phi = max(1, w.chi2)
+	// Where the noise is known chi-square is 1 but for chance; an excess beyond chance widens the errors.
+	if w.noise.known && !(w.chi2 > 1+2*math.Sqrt(2/float64(max(w.points-res.Free, 1)))) {
+		w.phi = 1
 	}
+	w.phi *= w.noise.inflation()
 	return res.End
 }
-
-// se returns the standard error of parameter i.
-func (w *window) se(i int) float64 { return math.Sqrt(w.cov[i*len(w.p)+i] * w.phi) }
 
 // judge sets free the bands that exceed their detection limit and takes back those that ran into a bound or vanished. It
 // reports whether anything changed. At the start only bands that were searched for are judged: the weak ones are tested
@@ -329,10 +384,18 @@ func (w *window) judge(start bool) (changed bool) {
 			w.expect(k)
 		case w.barred[k] || start && !band.Search:
 		case z > band.Detect:
+			if w.weakly(k) {
+				w.put(k, place{w.weak[k].position, w.weak[k].width})
+			}
 			w.found[k], changed = true, true
-		case band.Search && w.p[i+line.Position] != band.Position: // located in noise: back to the expected place
+		case !w.weakly(k): // located in noise: back to the expected place
 			w.expect(k)
 			changed = true
+		case w.weak[k].elsewhere != nil:
+			if at, ok := w.elsewhere(k); ok {
+				w.put(k, at)
+				w.found[k], changed = true, true
+			}
 		}
 	}
 	return changed
@@ -365,8 +428,10 @@ func (w *window) still() bool {
 // that happen to be low would count more (Nucl. Instrum. Methods 221, 437 (1984)).
 func (w *window) reweigh() {
 	w.problem.Curve(w.curve, w.p)
+	w.problem.Base(w.scratch, w.p)
 	for i, m := range w.curve {
-		w.sigma[i] = math.Sqrt(w.detector.variance(m))
+		misfit := w.recipe.Discrepancy * (m - w.scratch[i])
+		w.sigma[i] = math.Sqrt(w.noise.variance(m) + misfit*misfit)
 	}
 	w.weigh()
 }
@@ -406,15 +471,27 @@ func (w *window) spikes() bool {
 	return clean.Residual(w.r, w.recipe.SpikeThreshold, w.skip)+cleared > 0
 }
 
-// finish leaves the fit with its scale of errors.
-func (w *window) finish() {
-	if w.detector.Gain > 0 {
-		return
+// elsewhere looks in the residuals for a band that is not at its expected place. It must stand out by two standard errors more
+// than there, since several places are tried.
+func (w *window) elsewhere(k int) (place, bool) {
+	w.problem.Curve(w.curve, w.p)
+	root := math.Sqrt(w.phi)
+	for i, m := range w.curve {
+		w.r[i] = 0
+		if !w.skip[i] {
+			w.r[i] = (w.problem.Y[i] - m) / (w.sigma[i] * root)
+		}
 	}
-	// The gain is unknown, so chi-square is measured against the scatter between neighbouring channels.
-	if noise := clean.Noise(w.problem.Y, w.sigma, w.skip, w.scratch); noise > 0 {
-		w.chi2 /= noise * noise
+	best, at := w.Bands[k].Detect+2, -1
+	for i, filter := range w.weak[k].filters {
+		if score := floats.Dot(filter, w.r); score > best {
+			best, at = score, i
+		}
 	}
+	if at < 0 {
+		return place{}, false
+	}
+	return w.weak[k].elsewhere[at], true
 }
 
 func (w *window) save() {
@@ -424,7 +501,7 @@ func (w *window) save() {
 	copy(b.sigma, w.sigma)
 	copy(b.found, w.found)
 	copy(b.skip, w.skip)
-	b.phi, b.chi2, b.points, b.status = w.phi, w.chi2, w.points, w.status
+	b.phi, b.pure, b.chi2, b.points, b.status = w.phi, w.pure, w.chi2, w.points, w.status
 }
 
 func (w *window) restore() {
@@ -434,5 +511,13 @@ func (w *window) restore() {
 	copy(w.sigma, b.sigma)
 	copy(w.found, b.found)
 	copy(w.skip, b.skip)
-	w.phi, w.chi2, w.points, w.status = b.phi, b.chi2, b.points, b.status
+	w.phi, w.pure, w.chi2, w.points, w.status = b.phi, b.pure, b.chi2, b.points, b.status
+	for k, found := range w.found {
+		w.problem.SetTemplate(k, nil)
+		if !found {
+			w.problem.SetTemplate(k, w.weak[k].profile)
+		}
+	}
+	w.release()
+	w.weigh()
 }

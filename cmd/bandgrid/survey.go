@@ -55,6 +55,7 @@ type surveyOptions struct {
 	minArea     float64
 	gain        float64
 	readNoise   float64
+	instrument  float64
 	saturation  float64
 	notes       map[string]string
 	table       bool
@@ -74,8 +75,9 @@ func (o *surveyOptions) add(fs *pflag.FlagSet) {
 	fs.Float64Var(&o.oxide, "oxide", 0, "thickness of the substrate's oxide in `nm`, where known")
 	fs.Float64Var(&o.spot, "spot", 0, "laser spot's full width at half maximum in `um` (default: one step)")
 	fs.Float64Var(&o.minArea, "min-area", 0, "smallest region in `um2`; smaller specks and holes are absorbed (default: four pixels)")
-	fs.Float64Var(&o.gain, "gain", 0, "detector gain in `electrons` per count (default: from each pixel's residuals)")
+	fs.Float64Var(&o.gain, "gain", 0, "detector gain in `electrons` per count (default: from the scatter of the run)")
 	fs.Float64Var(&o.readNoise, "read-noise", 0, "scatter of a channel without light, in `counts`; with --gain")
+	fs.Float64Var(&o.instrument, "instrument-width", 0, "FWHM of the spectrometer's line in `cm-1`, where known: widths are then the natural ones")
 	fs.Float64Var(&o.saturation, "saturation", 0, "`counts` from which on a channel is full and left out")
 	fs.StringToStringVar(&o.notes, "note", nil, "`KEY=VALUE` for survey and report: sample, power, exposure ...")
 	fs.BoolVar(&o.table, "table", false, "write pixels.csv too: all quantities, a row per pixel")
@@ -96,8 +98,8 @@ func (o *surveyOptions) check(runs []string) error {
 		return errors.New("standard input has no name; say with -o where the survey goes")
 	case o.laser != 0 && !(o.laser >= 200 && o.laser <= 2000):
 		return fmt.Errorf("--laser %g: a wavelength in nm between 200 and 2000 is needed", o.laser)
-	case o.gain < 0 || o.readNoise < 0 || o.saturation < 0 || o.spot < 0 || o.minArea < 0 || o.oxide < 0 || o.workers < 0:
-		return errors.New("gain, read noise, saturation, spot, oxide, area and workers cannot be negative")
+	case o.gain < 0 || o.readNoise < 0 || o.instrument < 0 || o.saturation < 0 || o.spot < 0 || o.minArea < 0 || o.oxide < 0 || o.workers < 0:
+		return errors.New("gain, read noise, instrument width, saturation, spot, oxide, area and workers cannot be negative")
 	case o.readNoise > 0 && o.gain == 0:
 		return errors.New("--read-noise is in counts beside shot noise, so it needs --gain")
 	}
@@ -136,18 +138,27 @@ func (o *surveyOptions) run(ctx context.Context, runs []string, std streams) err
 	return failed
 }
 
+// readRecipe returns the recipe to use, flags that change it included.
 func (o *surveyOptions) readRecipe() (fit.Recipe, error) {
-	if o.recipe == "" {
-		return fit.Graphene(), nil
+	recipe, err := fit.Graphene(), error(nil)
+	if o.recipe != "" {
+		recipe, err = readRecipe(o.recipe)
 	}
-	f, err := os.Open(o.recipe)
+	if o.instrument > 0 {
+		recipe.InstrumentWidth = o.instrument
+	}
+	return recipe, err
+}
+
+func readRecipe(path string) (fit.Recipe, error) {
+	f, err := os.Open(path)
 	if err != nil {
 		return fit.Recipe{}, err
 	}
 	defer f.Close()
 	recipe, err := fit.ReadRecipe(f)
 	if err != nil {
-		return recipe, fmt.Errorf("%s: %w", o.recipe, err)
+		return recipe, fmt.Errorf("%s: %w", path, err)
 	}
 	return recipe, nil
 }
@@ -179,6 +190,9 @@ func (o *surveyOptions) one(ctx context.Context, run string, recipe fit.Recipe, 
 	if err != nil {
 		return err
 	}
+	if err := o.learn(ctx, run, &inputs); err != nil {
+		return errors.Join(err, folder.Abandon())
+	}
 	s, broken, stopped := o.fitAll(ctx, inputs, std)
 	if s == nil {
 		return errors.Join(stopped, folder.Abandon())
@@ -209,6 +223,7 @@ func (o *surveyOptions) one(ctx context.Context, run string, recipe fit.Recipe, 
 type inputs struct {
 	first, second *scan.Scan
 	plan, rest    *fit.Plan
+	options       mapio.Options // to open them again
 }
 
 func (in inputs) close() {
@@ -221,8 +236,8 @@ func (in inputs) close() {
 
 // openAll opens the runs and plans their fits. What it returns must be closed, also after an error.
 func (o *surveyOptions) openAll(run string, recipe fit.Recipe, std streams) (in inputs, err error) {
-	options := mapio.Options{Laser: o.laser, Columns: o.columns, Stdin: std.in}
-	if in.first, err = mapio.Open(run, options); err != nil {
+	in.options = mapio.Options{Laser: o.laser, Columns: o.columns, Stdin: std.in}
+	if in.first, err = mapio.Open(run, in.options); err != nil {
 		return in, err
 	}
 	if in.first.Laser == 0 {
@@ -239,7 +254,7 @@ func (o *surveyOptions) openAll(run string, recipe fit.Recipe, std streams) (in 
 	if o.with == "" {
 		return in, nil
 	}
-	if in.second, err = mapio.Open(o.with, options); err != nil {
+	if in.second, err = mapio.Open(o.with, in.options); err != nil {
 		return in, err
 	}
 	if len(in.plan.Lacks) == 0 {
@@ -255,6 +270,44 @@ func (o *surveyOptions) openAll(run string, recipe fit.Recipe, std streams) (in 
 			Remedy: "it should hold the windows that the first run lacks: " + strings.Join(in.plan.Lacks, ", ")}
 	}
 	return in, nil
+}
+
+// learn looks at a sample of each run before it is fitted. A run that can be opened again is read once more for that, at a
+// small part of the cost of its fit; of a stream the first pixels must do.
+func (o *surveyOptions) learn(ctx context.Context, run string, in *inputs) error {
+	for _, r := range []struct {
+		path string
+		sc   **scan.Scan
+		plan **fit.Plan
+	}{{run, &in.first, &in.plan}, {o.with, &in.second, &in.rest}} {
+		if *r.sc == nil {
+			continue
+		}
+		sample, err := o.sample(ctx, r.path, r.sc, in.options)
+		if err == nil {
+			*r.plan, err = (*r.plan).Learn(ctx, sample, o.workers)
+		}
+		if err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// sample returns pixels of the run. What is wrong with the run the fit will meet again, and report.
+func (o *surveyOptions) sample(ctx context.Context, path string, sc **scan.Scan, options mapio.Options) ([]scan.Pixel, error) {
+	if info, err := os.Stat(path); path == "-" || err != nil || !info.Mode().IsRegular() {
+		sample, all := fit.Head(ctx, *sc)
+		*sc = all
+		return sample, ctx.Err()
+	}
+	again, err := mapio.Open(path, options)
+	if err != nil {
+		return nil, err
+	}
+	defer again.Close()
+	sample, _ := fit.Sample(ctx, again, o.workers)
+	return sample, ctx.Err()
 }
 
 // fitAll fits the runs and joins them. broken says what part of the input was unusable though there is a survey. stopped says
@@ -349,6 +402,11 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 	s.Laser = in.first.Laser
 	s.Axis = survey.AxisInfo{Channels: len(in.first.Axis), From: low, To: high}
 	s.Recipe, _ = json.Marshal(in.plan.Recipe) // a recipe that was read or built in can be written
+	for _, plan := range []*fit.Plan{in.plan, in.rest} {
+		if plan != nil && plan.Learned != nil {
+			s.Learned = append(s.Learned, *plan.Learned)
+		}
+	}
 	s.Complete = complete
 	s.Settings = map[string]any{"film": o.film}
 	for name, v := range map[string]float64{

@@ -9,6 +9,7 @@ import (
 	"testing"
 
 	"bandgrid/fit"
+	"bandgrid/fit/line"
 	"bandgrid/fit/lsq"
 )
 
@@ -165,7 +166,7 @@ func TestBilayerComponents(t *testing.T) {
 	for v := 2550.0; v <= 2850; v++ {
 		x = append(x, v)
 	}
-	problem := lsq.NewBands(x, 1, 1)
+	problem := lsq.NewBands(x, 1, line.Lorentzian{})
 	for i := range x {
 		problem.RootW[i] = 1
 	}

@@ -5,8 +5,6 @@
 // is that of the Lorentzian part: the natural one.
 package line
 
-import "math"
-
 // Parameters of a band, in order.
 const (
 	Height   = iota // counts
@@ -16,23 +14,22 @@ const (
 )
 
 // Lorentzian is H/(1+u²) with u = 2(x-x0)/FWHM: the profile of a transition with one lifetime, and the customary one for the
-// bands of graphene.
+// bands of graphene. Area π/2 H FWHM.
 type Lorentzian struct{}
 
-// Eval stores the profile of a band with parameters p (height, position, FWHM) at x in y, and unless dh is nil its derivatives
-// with respect to height, position and width in dh, dx and dw. All slices are as long as x. It keeps and changes neither x
-// nor p.
-func (Lorentzian) Eval(y, dh, dx, dw, x, p []float64) {
+func (Lorentzian) Len() int { return Len }
+
+func (Lorentzian) Eval(y []float64, d [][]float64, x, p []float64) {
 	h, x0, k := p[Height], p[Position], 2/p[Width]
 	y = y[:len(x)]
-	if dh == nil {
+	if d == nil {
 		for i, v := range x {
 			u := (v - x0) * k
 			y[i] = h * (1 / (1 + u*u)) // as below, to the last bit
 		}
 		return
 	}
-	dh, dx, dw = dh[:len(x)], dx[:len(x)], dw[:len(x)]
+	dh, dx, dw := d[Height][:len(x)], d[Position][:len(x)], d[Width][:len(x)]
 	hx, hw := 2*h*k, h*k
 	for i, v := range x {
 		u := (v - x0) * k
@@ -45,5 +42,8 @@ func (Lorentzian) Eval(y, dh, dx, dw, x, p []float64) {
 	}
 }
 
-// Area returns the area, counts times cm-1, of a Lorentzian of that height and FWHM: π/2 times their product.
-func (Lorentzian) Area(height, width float64) float64 { return math.Pi / 2 * height * width }
+func (Lorentzian) Area(p []float64) float64                       { return lorentzArea * p[Height] * p[Width] }
+func (Lorentzian) AreaGradient(g, p []float64)                    { product(g, p, lorentzArea) }
+func (Lorentzian) FWHM(p []float64) float64                       { return p[Width] }
+func (Lorentzian) FWHMGradient(g, p []float64)                    { only(g, Width) }
+func (Lorentzian) Maximum(p []float64) (position, height float64) { return p[Position], p[Height] }

@@ -58,25 +58,6 @@ func (Gaussian) FWHM(p []float64) float64                       { return p[Width
 func (Gaussian) FWHMGradient(g, p []float64)                    { only(g, Width) }
 func (Gaussian) Maximum(p []float64) (position, height float64) { return p[Position], p[Height] }
 
-// LorentzianShape is Lorentzian as a Shape: the profile of a transition with one lifetime. Area π/2 H FWHM.
-type LorentzianShape struct{}
-
-func (LorentzianShape) Len() int { return Len }
-
-func (LorentzianShape) Eval(y []float64, d [][]float64, x, p []float64) {
-	if d == nil {
-		Lorentzian{}.Eval(y, nil, nil, nil, x, p)
-		return
-	}
-	Lorentzian{}.Eval(y, d[Height], d[Position], d[Width], x, p)
-}
-
-func (LorentzianShape) Area(p []float64) float64                       { return lorentzArea * p[Height] * p[Width] }
-func (LorentzianShape) AreaGradient(g, p []float64)                    { product(g, p, lorentzArea) }
-func (LorentzianShape) FWHM(p []float64) float64                       { return p[Width] }
-func (LorentzianShape) FWHMGradient(g, p []float64)                    { only(g, Width) }
-func (LorentzianShape) Maximum(p []float64) (position, height float64) { return p[Position], p[Height] }
-
 // Mixing is the place of PseudoVoigt's fourth parameter, η.
 const Mixing = 3
 

@@ -13,7 +13,7 @@ var shapes = []struct {
 	Shape
 	p []float64
 }{
-	{LorentzianShape{}, []float64{400, 1582, 14}},
+	{Lorentzian{}, []float64{400, 1582, 14}},
 	{Gaussian{}, []float64{400, 1582, 14}},
 	{PseudoVoigt{}, []float64{400, 1582, 14, 0.3}},
 	{PseudoVoigt{}, []float64{-40, 1582, 14, 1}},

@@ -101,8 +101,8 @@ func TestVoigtLimits(t *testing.T) {
 	lorentz := []float64{300, 0.2, 14}
 	for _, g := range []float64{0, 1e-320, 1e-200, 14e-9, 14e-8, 14e-7} {
 		// The part that the Gaussian changes is of the order 4 (G/L)², below 1e-13.
-		same(fmt.Sprintf("Gaussian part %g", g), FreeVoigt{}, LorentzianShape{}, []float64{300, 0.2, 14, g}, lorentz, 1e-13)
-		same(fmt.Sprintf("instrument %g", g), Voigt{Instrument: g}, LorentzianShape{}, lorentz, lorentz, 1e-13)
+		same(fmt.Sprintf("Gaussian part %g", g), FreeVoigt{}, Lorentzian{}, []float64{300, 0.2, 14, g}, lorentz, 1e-13)
+		same(fmt.Sprintf("instrument %g", g), Voigt{Instrument: g}, Lorentzian{}, lorentz, lorentz, 1e-13)
 	}
 	x = []float64{-20, -3, -0.1, 0, 1, 8, 15} // within 3 widths: beyond, any Lorentzian part wins in the end
 	for _, l := range []float64{0, 1e-320, 1e-200, 14e-24} {
@@ -179,7 +179,7 @@ func BenchmarkEval(b *testing.B) {
 		Shape
 		p []float64
 	}{
-		{"lorentzian", LorentzianShape{}, []float64{1, 1475, 14}},
+		{"lorentzian", Lorentzian{}, []float64{1, 1475, 14}},
 		{"gaussian", Gaussian{}, []float64{1, 1475, 14}},
 		{"pseudo", PseudoVoigt{}, []float64{1, 1475, 14, 0.3}},
 		{"fano", BreitWignerFano{}, []float64{1, 1475, 14, 0.1}},

@@ -6,94 +6,160 @@ import (
 	"bandgrid/fit/line"
 )
 
-// Bands is a sum of bands over a polynomial background. Its parameters are the background's coefficients, lowest power first,
-// then height, position and width of each band.
+// channels are the data of a window and the background under its bands, a polynomial.
 //
 // The background's variable is t = (x - middle)/half-width of the channels given, so t runs from -1 to 1 and the coefficients
 // have the unit of counts.
-type Bands struct {
+type channels struct {
 	X     []float64 // shift of each channel, cm-1, ascending
 	Y     []float64 // counts; any finite value where the weight is zero
 	RootW []float64 // square root of each channel's weight; change it with SetWeights
 
-	order   int // of the background
-	bands   int
 	powers  [][]float64 // t^k
-	columns [][]float64 // weighted derivatives by each parameter
+	columns [][]float64 // weighted derivatives by each parameter, those of the background first
 	used    [][]float64 // the columns of the free parameters
 	curve   []float64
 	profile []float64
 	resid   []float64
 }
 
-// NewBands returns the problem for channels at x with a background of that order and a number of bands.
-func NewBands(x []float64, order, bands int) *Bands {
+// newChannels makes room for a background of that order and a number of further parameters.
+func newChannels(x []float64, order, further int) channels {
 	n := len(x)
-	b := &Bands{
-		X: x, Y: make([]float64, n), RootW: make([]float64, n), order: order, bands: bands,
-		curve: make([]float64, n), profile: make([]float64, n), resid: make([]float64, n),
-	}
+	v := func() []float64 { return make([]float64, n) }
+	c := channels{X: x, Y: v(), RootW: v(), curve: v(), profile: v(), resid: v()}
 	mid, half := (x[0]+x[n-1])/2, (x[n-1]-x[0])/2
 	for k := range order + 1 {
-		power := make([]float64, n)
-		for i, v := range x {
+		power := v()
+		for i, at := range x {
 			power[i] = 1
 			if k > 0 {
-				power[i] = b.powers[k-1][i] * (v - mid) / half
+				power[i] = c.powers[k-1][i] * (at - mid) / half
 			}
 		}
-		b.powers = append(b.powers, power)
+		c.powers = append(c.powers, power)
 	}
-	for range b.Len() {
-		b.columns = append(b.columns, make([]float64, n))
+	for range order + 1 + further {
+		c.columns = append(c.columns, v())
 	}
-	b.used = make([][]float64, 0, b.Len())
+	c.used = make([][]float64, 0, len(c.columns))
+	return c
+}
+
+// Background is the number of background coefficients; they are the first parameters.
+func (c *channels) Background() int { return len(c.powers) }
+
+// Powers returns the background's basis functions, one slice per coefficient. Read only.
+func (c *channels) Powers() [][]float64 { return c.powers }
+
+// SetWeights must be called after RootW was changed.
+func (c *channels) SetWeights() {
+	for k, power := range c.powers {
+		floats.MulTo(c.columns[k], power, c.RootW)
+	}
+}
+
+// Base stores the background at p in dst.
+func (c *channels) Base(dst, p []float64) {
+	clear(dst)
+	for k, power := range c.powers {
+		floats.AddScaled(dst, p[k], power)
+	}
+}
+
+// normal makes the normal equations from the columns and the curve, as [Problem] asks.
+func (c *channels) normal(a, g []float64, free []bool) float64 {
+	floats.SubTo(c.resid, c.Y, c.curve)
+	floats.Mul(c.resid, c.RootW)
+	c.project(g, free)
+	n := len(c.used)
+	for i, ci := range c.used {
+		for j, cj := range c.used[:i+1] {
+			a[i*n+j] = floats.Dot(ci, cj)
+		}
+	}
+	return floats.Dot(c.resid, c.resid)
+}
+
+// project stores in g the scalar products of the free columns and the weighted residuals.
+func (c *channels) project(g []float64, free []bool) {
+	c.used = c.used[:0]
+	for i, column := range c.columns {
+		if free[i] {
+			g[len(c.used)] = floats.Dot(column, c.resid)
+			c.used = append(c.used, column)
+		}
+	}
+}
+
+// Bands is a sum of bands over a polynomial background. Its parameters are the background's coefficients, lowest power first,
+// then those of each band's shape: height, position, width, and what else it has.
+type Bands struct {
+	channels
+	shapes    []line.Shape
+	first     []int       // parameter of each band
+	templates [][]float64 // profile of unit height that stands in for a band, or nil
+}
+
+// NewBands returns the problem for channels at x with a background of that order and bands of those shapes.
+func NewBands(x []float64, order int, shapes ...line.Shape) *Bands {
+	b := &Bands{shapes: shapes, templates: make([][]float64, len(shapes))}
+	n := 0
+	for _, s := range shapes {
+		b.first = append(b.first, order+1+n)
+		n += s.Len()
+	}
+	b.channels = newChannels(x, order, n)
 	return b
 }
 
 // Len is the number of parameters.
-func (b *Bands) Len() int { return b.order + 1 + line.Len*b.bands }
-
-// Background is the number of background coefficients; they come first.
-func (b *Bands) Background() int { return b.order + 1 }
+func (b *Bands) Len() int { return len(b.columns) }
 
 // Band returns the place of the first parameter (height) of band k.
-func (b *Bands) Band(k int) int { return b.order + 1 + line.Len*k }
+func (b *Bands) Band(k int) int { return b.first[k] }
 
-// Powers returns the background's basis functions, one slice per coefficient. Read only.
-func (b *Bands) Powers() [][]float64 { return b.powers }
+// Shape returns the shape of band k.
+func (b *Bands) Shape(k int) line.Shape { return b.shapes[k] }
 
-// SetWeights must be called after RootW was changed.
-func (b *Bands) SetWeights() {
-	for k, power := range b.powers {
-		floats.MulTo(b.columns[k], power, b.RootW)
+// SetTemplate makes band k a fixed profile of unit height times the band's height, its only parameter that counts; nil makes it
+// a band again. The profile is used, not copied.
+func (b *Bands) SetTemplate(k int, profile []float64) { b.templates[k] = profile }
+
+// Template tells whether band k is a fixed profile.
+func (b *Bands) Template(k int) bool { return b.templates[k] != nil }
+
+// Profile stores the contribution of band k at p, all parameters of the problem, in dst.
+func (b *Bands) Profile(dst []float64, k int, p []float64) {
+	p = p[b.first[k]:]
+	if t := b.templates[k]; t != nil {
+		floats.ScaleTo(dst, p[line.Height], t)
+		return
 	}
+	b.shapes[k].Eval(dst, nil, b.X, p)
 }
 
 // Curve stores the model at p in dst, len(b.X).
 func (b *Bands) Curve(dst, p []float64) {
 	b.Base(dst, p)
-	for k := range b.bands {
-		line.Lorentzian{}.Eval(b.profile, nil, nil, nil, b.X, p[b.Band(k):])
+	for k := range b.shapes {
+		b.Profile(b.profile, k, p)
 		floats.Add(dst, b.profile)
 	}
 }
 
-// Base stores the background at p in dst.
-func (b *Bands) Base(dst, p []float64) {
-	clear(dst)
-	for k, power := range b.powers {
-		floats.AddScaled(dst, p[k], power)
-	}
-}
-
-// Normal implements [Problem]. It allocates nothing.
-func (b *Bands) Normal(a, g, p []float64, free []bool) float64 {
+// evaluate fills in the curve and the columns of the free parameters at p.
+func (b *Bands) evaluate(p []float64, free []bool) {
 	b.Base(b.curve, p)
-	for k := range b.bands {
-		i := b.Band(k)
-		c := b.columns[i : i+line.Len]
-		line.Lorentzian{}.Eval(b.profile, c[line.Height], c[line.Position], c[line.Width], b.X, p[i:])
+	for k, shape := range b.shapes {
+		i := b.first[k]
+		c := b.columns[i : i+shape.Len()]
+		if t := b.templates[k]; t != nil {
+			floats.AddScaled(b.curve, p[i], t)
+			floats.MulTo(c[line.Height], t, b.RootW)
+			continue
+		}
+		shape.Eval(b.profile, c, b.X, p[i:])
 		floats.Add(b.curve, b.profile)
 		for j := range c {
 			if free[i+j] {
@@ -101,20 +167,22 @@ func (b *Bands) Normal(a, g, p []float64, free []bool) float64 {
 			}
 		}
 	}
-	floats.SubTo(b.resid, b.Y, b.curve)
-	floats.Mul(b.resid, b.RootW)
-	b.used = b.used[:0]
-	for i, c := range b.columns {
-		if free[i] {
-			b.used = append(b.used, c)
-		}
-	}
-	n := len(b.used)
-	for i, ci := range b.used {
-		for j, cj := range b.used[:i+1] {
-			a[i*n+j] = floats.Dot(ci, cj)
-		}
-		g[i] = floats.Dot(ci, b.resid)
-	}
-	return floats.Dot(b.resid, b.resid)
 }
+
+// Normal implements [Problem]. It allocates nothing.
+func (b *Bands) Normal(a, g, p []float64, free []bool) float64 {
+	b.evaluate(p, free)
+	return b.normal(a, g, free)
+}
+
+// Project stores in g, in the order of the free parameters, the scalar products of the model's derivatives at p with r, both
+// weighted: J'Wr. r has a value per channel, counts.
+func (b *Bands) Project(g, r, p []float64, free []bool) {
+	b.evaluate(p, free)
+	floats.MulTo(b.resid, r, b.RootW)
+	b.project(g, free)
+}
+
+// Columns returns the weighted derivatives at the point where the problem was last evaluated, one slice for each of the free
+// parameters then. Read only.
+func (b *Bands) Columns() [][]float64 { return b.used }

@@ -41,7 +41,7 @@ func TestBandsAgainstSciPy(t *testing.T) {
 		for i, c := range channels {
 			x[i] = c[0]
 		}
-		b := NewBands(x, 1, len(bands))
+		b := NewBands(x, 1, lorentzians(len(bands))...)
 		for i, c := range channels {
 			b.Y[i], b.RootW[i] = c[1], 1/c[2]
 		}
@@ -111,4 +111,11 @@ func number(t *testing.T, s string) float64 {
 		t.Fatal(err)
 	}
 	return v
+}
+
+func lorentzians(n int) (shapes []line.Shape) {
+	for range n {
+		shapes = append(shapes, line.Lorentzian{})
+	}
+	return shapes
 }

@@ -34,6 +34,8 @@ func (e End) String() string {
 		return "stalled"
 	case Singular:
 		return "singular"
+	case NotFinite:
+		return "start not finite"
 	}
 	return fmt.Sprintf("End(%d)", uint8(e))
 }

@@ -20,7 +20,7 @@ func axis(n int) []float64 {
 var truth = []float64{300, -12, 250, 1345, 26, 400, 1584, 14, 110, 1621, 11}
 
 func problem(r *rand.Rand, noise float64) *Bands {
-	b := NewBands(axis(459), 1, 3)
+	b := NewBands(axis(459), 1, lorentzians(3)...)
 	b.Curve(b.Y, truth)
 	for i := range b.Y {
 		b.Y[i] += noise * r.NormFloat64()

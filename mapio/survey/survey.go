@@ -45,8 +45,9 @@ type Info struct {
 	Axis       AxisInfo            `json:"axis"`
 	Grid       scan.Grid           `json:"grid"`
 	Pixels     Pixels              `json:"pixels"`
-	Recipe     json.RawMessage     `json:"recipe"`   // as used, in full
-	Settings   map[string]any      `json:"settings"` // interpretation and display settings: spot, film, minimum area ...
+	Recipe     json.RawMessage     `json:"recipe"`            // as used, in full
+	Learned    []Learned           `json:"learned,omitempty"` // for each of the runs
+	Settings   map[string]any      `json:"settings"`          // interpretation and display settings: spot, film, minimum area ...
 	Notes      map[string]string   `json:"notes,omitempty"`
 	Warnings   []string            `json:"warnings"`
 	Complete   bool                `json:"complete"` // false where part of the input was unusable or the run was interrupted
