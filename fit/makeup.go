@@ -43,9 +43,9 @@ type try struct {
 // Lett. 9, 346 (2009)) and that of the four lines of a bilayer.
 const makeupDiscrepancy = 0.015
 
-// convincing is the AICc difference from which the simpler description has little support: 4 to 7 "considerably less" on the
-// published scale (Sociol. Methods Res. 33, 261 (2004)).
-const convincing = 7
+// convincing is the AICc difference from which the simpler description has essentially no support on the published
+// scale (Sociol. Methods Res. 33, 261 (2004)).
+const convincing = 10
 
 func newMakeups(w *windowPlan) *makeups {
 	m := &makeups{band: make([]float64, len(w.x))}
