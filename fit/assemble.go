@@ -163,7 +163,7 @@ func (f *Fits) maps(s *survey.Survey, chosen []int32) {
 	}
 	q := len(f.plan.Columns)
 	for k, c := range f.plan.Columns {
-		quantity := survey.Quantity{Name: c.Name, Unit: c.Unit, Description: c.Description, Values: gather(k)}
+		quantity := survey.Quantity{Name: c.Name, Unit: c.Unit, Description: c.Description, Of: c.Of, Values: gather(k)}
 		if se := gather(q + k); c.HasSE {
 			quantity.SE = se
 		}

@@ -170,7 +170,9 @@ func (w *window) misfit(k int) misfit {
 	m.freedom = trace * trace / trace2
 	known := w.discrepancy[k]
 	m.variance = known * known * height * height
-	if m.significant() {
+	// A band that is known to be of several lines is described by the single one that comes closest: what is asked for is that
+	// line's width, as published tables give it, and the misfit is no error of it.
+	if severalLines := w.makeups != nil && w.makeups.components > 1; m.significant() && !severalLines {
 		m.variance = max(m.variance, m.square*height*height)
 	}
 	return m

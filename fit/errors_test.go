@@ -123,6 +123,7 @@ func usualBench() *bench {
 }
 
 func TestErrorsWithCorrelatedChannels(t *testing.T) {
+	t.Parallel()
 	b := usualBench()
 	b.correlation = 0.3
 	const n = 2000
@@ -142,6 +143,7 @@ func TestErrorsWithCorrelatedChannels(t *testing.T) {
 // the distance in half widths, a new one for each spectrum. At 10,000 counts that is as much as the noise of a channel, but
 // alike in neighbouring channels.
 func TestErrorsWidenWithModelError(t *testing.T) {
+	t.Parallel()
 	for _, height := range []float64{1000, 3000, 10000} {
 		b := usualBench()
 		b.sample = SampleSize
@@ -180,6 +182,7 @@ func TestErrorsWidenWithModelError(t *testing.T) {
 }
 
 func TestCoverageOfWeakBands(t *testing.T) {
+	t.Parallel()
 	for _, ratio := range []float64{0.5, 1, 2, 3, 4} { // height over noise of a channel
 		b := usualBench()
 		noise := math.Sqrt(b.level + b.read*b.read)
@@ -205,6 +208,7 @@ func TestCoverageOfWeakBands(t *testing.T) {
 // TestScatterAgainstCramerRao compares the scatter of positions with the least that any unbiased estimate can have: from the
 // Fisher matrix of all fitted parameters at the truth, with derivatives by finite differences.
 func TestScatterAgainstCramerRao(t *testing.T) {
+	t.Parallel()
 	b := usualBench()
 	const n = 3000
 	sums := b.run(t, Graphene(), n, 8)

@@ -59,7 +59,6 @@ func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 			f.ratio(w, r, v, se)
 		}
 		if m := w.makeups; m != nil && w.found[0] {
-			m.choose(w)
 			v[w.makeup], v[w.makeup+1] = float32(m.components), float32(m.evidence)
 		}
 	}

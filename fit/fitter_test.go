@@ -84,6 +84,7 @@ func (p *pulls) mean() float64  { return p.sum / p.n }
 func (p *pulls) width() float64 { return math.Sqrt(p.sum2/p.n - p.mean()*p.mean()) }
 
 func TestPulls(t *testing.T) {
+	t.Parallel()
 	axis := evenAxis(1200, 2850, 1.3)
 	const n = 2000
 	truth := map[string]float64{
@@ -137,6 +138,7 @@ func TestPulls(t *testing.T) {
 }
 
 func TestAbsentBands(t *testing.T) {
+	t.Parallel()
 	axis := evenAxis(1200, 2850, 1.3)
 	f, column, v, se := newTestFitter(t, axis, Detector{})
 	r := rand.New(rand.NewPCG(3, 4))

@@ -45,6 +45,7 @@ func makeupsOf(t *testing.T, n int, material synth.Object, signal synth.Signal, 
 // TestMakeup prints how often each make-up is chosen. The bilayer's four lines are those of its published make-up; three layers
 // have six lines, graphite two.
 func TestMakeup(t *testing.T) {
+	t.Parallel()
 	for _, layers := range []int{1, 2, 3, 10} {
 		for _, g := range []float64{50, 100, 200, 400, 1000} {
 			s := makeupsOf(t, 300, synth.Object{Layers: layers}, synth.Signal{G: g}, uint64(layers))
@@ -64,6 +65,7 @@ func TestMakeup(t *testing.T) {
 // TestSingleLayersHaveOneLine has single layers whose 2D band is skewed: up to three tenths of it lie 12 cm-1 above the rest,
 // half a half width. Beyond, at half and half, the shape is no longer one line's.
 func TestSingleLayersHaveOneLine(t *testing.T) {
+	t.Parallel()
 	for _, skew := range []float64{0, 0.1, 0.2, 0.3} {
 		for _, height := range []float64{300, 1000, 3000, 10000} {
 			s := makeupsOf(t, 500, synth.Object{Layers: 1, TwoDSkew: skew}, synth.Signal{G: height / 3}, 7)

@@ -74,6 +74,7 @@ func surveyOf(t *testing.T, scene *synth.Scene, detector fit.Detector) (*survey.
 const pure = 0.98
 
 func TestLayerNumberOnASimulatedMap(t *testing.T) {
+	t.Parallel()
 	s, truth := surveyOf(t, flakes(11), fit.Detector{})
 	number := s.Map("layer_number").Values
 	var right, all [3]int
@@ -95,6 +96,7 @@ func TestLayerNumberOnASimulatedMap(t *testing.T) {
 }
 
 func TestPullsOnASimulatedMap(t *testing.T) {
+	t.Parallel()
 	for _, detector := range []fit.Detector{{}, {Gain: 1, ReadNoise: 4}} {
 		s, truth := surveyOf(t, flakes(12), detector)
 		for _, q := range []struct {

@@ -79,6 +79,7 @@ func Absent(k int) Status { return 1 << (AbsentShift + k) }
 type Column struct {
 	Name, Unit, Description string
 	HasSE                   bool
+	Of                      []string // for a ratio: the columns above and below the line
 }
 
 // A Plan is a recipe made ready for one axis, laser line and detector. It is read only, and shared by the workers.
@@ -220,10 +221,10 @@ func (p *Plan) addWindow(w windowPlan) {
 	for _, b := range w.Bands {
 		w.columns = append(w.columns, len(p.Columns))
 		p.Columns = append(p.Columns,
-			Column{b.Name + "_position", "cm-1", "Raman shift of the " + b.Name + " band's maximum; undefined where the band is not found", true},
-			Column{b.Name + "_width", "cm-1", "full width at half maximum of the " + b.Name + " band; undefined where the band is not found", true},
-			Column{b.Name + "_height", "counts", "height of the " + b.Name + " band over the background; at the expected place where the band is not found", true},
-			Column{b.Name + "_area", "counts cm-1", "area of the " + b.Name + " band; at the expected place where the band is not found", true},
+			Column{b.Name + "_position", "cm-1", "Raman shift of the " + b.Name + " band's maximum; undefined where the band is not found", true, nil},
+			Column{b.Name + "_width", "cm-1", "full width at half maximum of the " + b.Name + " band; undefined where the band is not found", true, nil},
+			Column{b.Name + "_height", "counts", "height of the " + b.Name + " band over the background; at the expected place where the band is not found", true, nil},
+			Column{b.Name + "_area", "counts cm-1", "area of the " + b.Name + " band; at the expected place where the band is not found", true, nil},
 		)
 	}
 	find := func(name string) int {
@@ -238,15 +239,16 @@ func (p *Plan) addWindow(w windowPlan) {
 	if b := w.Bands[0]; b.Makeup && len(w.Bands) == 1 {
 		w.makeup = len(p.Columns)
 		p.Columns = append(p.Columns,
-			Column{b.Name + "_components", "", "lines that describe the shape of the " + b.Name + " band best: 1, 2, or 4; not a number of layers", false},
-			Column{b.Name + "_evidence", "", "AICc difference to the next best make-up of the " + b.Name + " band", false},
+			Column{b.Name + "_components", "", "lines that describe the shape of the " + b.Name + " band best: 1, 2, or 4; not a number of layers", false, nil},
+			Column{b.Name + "_evidence", "", "AICc difference to the next best make-up of the " + b.Name + " band", false, nil},
 		)
 	}
 	p.windows = append(p.windows, w)
 }
 
 func ratioColumn(r Ratio) Column {
-	return Column{r.Name, "", fmt.Sprintf("%s of the %s band over that of the %s band, as measured", r.Of, r.Numerator, r.Denominator), true}
+	return Column{r.Name, "", fmt.Sprintf("%s of the %s band over that of the %s band, as measured", r.Of, r.Numerator, r.Denominator), true,
+		[]string{r.Numerator + "_" + r.Of, r.Denominator + "_" + r.Of}}
 }
 
 // channelCount is the number of channels that the windows use.

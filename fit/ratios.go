@@ -29,7 +29,7 @@ func RatioSteps(r Recipe) []Step {
 func divide(r Ratio, num, den, found *survey.Quantity) survey.Quantity {
 	c := ratioColumn(r)
 	n := len(num.Values)
-	q := survey.Quantity{Name: c.Name, Unit: c.Unit, Description: c.Description, Values: make([]float32, n), SE: make([]float32, n)}
+	q := survey.Quantity{Name: c.Name, Unit: c.Unit, Description: c.Description, Of: c.Of, Values: make([]float32, n), SE: make([]float32, n)}
 	for i := range n {
 		q.Values[i], q.SE[i] = float32(nan), float32(nan)
 		if p := found.Values[i]; p != p {
@@ -37,7 +37,8 @@ func divide(r Ratio, num, den, found *survey.Quantity) survey.Quantity {
 		}
 		a, b := float64(num.Values[i]), float64(den.Values[i])
 		ratio := a / b
-		q.Values[i] = float32(ratio)
+		se := float64(den.SE[i]) / b
+		q.Values[i] = float32(ratio * (1 - se*se)) // less its bias to second order
 		q.SE[i] = float32(math.Hypot(float64(num.SE[i]), ratio*float64(den.SE[i])) / math.Abs(b))
 	}
 	return q

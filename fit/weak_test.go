@@ -11,6 +11,7 @@ import (
 // TestWeakDIsUnbiased has a map whose D/G rises from 0 to 0.3 across the detection limit, with a D band that is not where the
 // recipe expects it. At every level the mean of D/G is right.
 func TestWeakDIsUnbiased(t *testing.T) {
+	t.Parallel()
 	ratios := []float64{0, 0.02, 0.04, 0.06, 0.08, 0.1, 0.12, 0.15, 0.2, 0.25, 0.3}
 	b := usualBench()
 	b.axis = evenAxis(1200, 1760, 1.3)
@@ -54,6 +55,7 @@ func TestWeakDIsUnbiased(t *testing.T) {
 
 // TestFalsePositives counts bands that are found where there is none, and compares with the stated rates.
 func TestFalsePositives(t *testing.T) {
+	t.Parallel()
 	// At 4 standard errors of a normal deviate one false band in 31,600 is due; to see the rate in a test, lower limits are set,
 	// and the tail is compared at each.
 	const n = 20000
@@ -103,6 +105,7 @@ func TestFalsePositives(t *testing.T) {
 
 // TestFalseStrongBands counts G and 2D bands on bare substrate, where the search tries many places.
 func TestFalseStrongBands(t *testing.T) {
+	t.Parallel()
 	const n = 20000
 	b := &bench{axis: evenAxis(1200, 2850, 1.5), level: 300, gain: 1, read: 4}
 	f, column := b.learned(t, Graphene(), 41)
@@ -129,6 +132,7 @@ func TestFalseStrongBands(t *testing.T) {
 
 // TestLearnDoesNotDependOnOrder gives the pixels of a scan in three orders.
 func TestLearnDoesNotDependOnOrder(t *testing.T) {
+	t.Parallel()
 	b := usualBench()
 	plan, err := NewPlan(Graphene(), b.axis, 532, Detector{})
 	if err != nil {

@@ -149,6 +149,9 @@ func (w *window) fit(counts []float32) bool {
 	if w.spikeChannels() > 0 {
 		w.status |= Spiked
 	}
+	if w.makeups != nil && w.found[0] {
+		w.makeups.choose(w)
+	}
 	w.errors()
 	return true
 }

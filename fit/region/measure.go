@@ -174,6 +174,9 @@ func (m *measure) stats(cells []int32) []survey.Stat {
 			var sum summary
 			for k := range next {
 				list[k] = sum.of(m.quantities[k], cells, m.s.Grid)
+				if of := m.quantities[k].Of; len(of) == 2 {
+					sum.ratio(&list[k], m.quantities[k], m.s.Map(of[0]), m.s.Map(of[1]), cells, m.s.Grid)
+				}
 			}
 		})
 	}

@@ -10,7 +10,10 @@ import (
 )
 
 // A summary computes statistics; its slices are scratch memory that grows to the largest region.
-type summary struct{ v, d []float32 }
+type summary struct {
+	v, d []float32
+	e    []float32 // of the whole map
+}
 
 // of summarises a quantity over cells, rising indices into the map.
 func (u *summary) of(q *survey.Quantity, cells []int32, g scan.Grid) survey.Stat {
@@ -39,6 +42,36 @@ func (u *summary) of(q *survey.Quantity, cells []int32, g scan.Grid) survey.Stat
 		st.MeanSE = meanSE(q.Values, cells, st.Mean, n, g)
 	}
 	return st
+}
+
+// ratio replaces the mean of a ratio by the ratio of the means of what it is made of, over the cells where it is defined. The
+// mean of ratios would give weak pixels, whose ratios scatter most, as much weight as strong ones. The error is that of the
+// mean of a - r b, to first order.
+func (u *summary) ratio(st *survey.Stat, q, a, b *survey.Quantity, cells []int32, g scan.Grid) {
+	if a == nil || b == nil || st.N == 0 {
+		return
+	}
+	var above, below float64
+	for _, c := range cells {
+		if x := q.Values[c]; x == x {
+			above += float64(a.Values[c])
+			below += float64(b.Values[c])
+		}
+	}
+	st.Mean = above / below
+	if st.N < 2 {
+		return
+	}
+	if u.e == nil {
+		u.e = make([]float32, len(q.Values))
+	}
+	for _, c := range cells {
+		u.e[c] = float32(math.NaN())
+		if x := q.Values[c]; x == x {
+			u.e[c] = float32(float64(a.Values[c]) - st.Mean*float64(b.Values[c]))
+		}
+	}
+	st.MeanSE = meanSE(u.e, cells, 0, st.N, g) / math.Abs(below/float64(st.N))
 }
 
 // quantile interpolates linearly between order statistics: the value at rank p(n-1), from 0. It reorders v.

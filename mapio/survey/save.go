@@ -32,7 +32,7 @@ func Save(dir string, s *Survey) error {
 		return WriteFile(filepath.Join(dir, mapsFolder, name+".npy"), func(w io.Writer) error { return npy.Write(w, shape, values) })
 	}
 	for _, q := range s.Maps {
-		s.Quantities[q.Name] = Quantity{Unit: q.Unit, Description: q.Description}
+		s.Quantities[q.Name] = Quantity{Unit: q.Unit, Description: q.Description, Of: q.Of}
 		if err := array(q.Name, q.Values); err != nil {
 			return err
 		}

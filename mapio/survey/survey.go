@@ -12,11 +12,13 @@ import (
 
 // A Quantity is one number per cell of the grid. Its name is the same in code, JSON, files, figures and text.
 type Quantity struct {
-	Name        string    `json:"-"`
-	Unit        string    `json:"unit"` // "cm-1", "counts", "nm", ...; empty for a pure number
-	Description string    `json:"description"`
-	Values      []float32 `json:"-"` // Rows x Cols, row 0 lowest y, column 0 lowest x; NaN where there is none
-	SE          []float32 `json:"-"` // standard errors, likewise; nil where the quantity has none
+	Name        string `json:"-"`
+	Unit        string `json:"unit"` // "cm-1", "counts", "nm", ...; empty for a pure number
+	Description string `json:"description"`
+	// Of names, for a ratio, the quantities above and below the line: means over regions are ratios of their means.
+	Of     []string  `json:"of,omitempty"`
+	Values []float32 `json:"-"` // Rows x Cols, row 0 lowest y, column 0 lowest x; NaN where there is none
+	SE     []float32 `json:"-"` // standard errors, likewise; nil where the quantity has none
 }
 
 // Pixels counts what became of a run's pixels.
@@ -110,7 +112,7 @@ type Stat struct {
 	N        int     // pixels with a value
 	Median   float64 // NaN where N is 0, like all below
 	Spread   float64 // robust: 1.4826 times the median absolute deviation
-	Mean     float64
+	Mean     float64 // of a ratio: the ratio of the means
 	MeanSE   float64 // NaN where N is below 2
 	P5, P95  float64 // 5th and 95th percentile
 }

@@ -198,5 +198,32 @@ func quality(s *survey.Survey) (list []string) {
 		}
 		list = append(list, fmt.Sprintf("Cosmic rays: %s left out, in %s.", plural(channels, "channel"), plural(pixels, "pixel")))
 	}
+	for _, l := range s.Learned {
+		list = append(list, learned(l)...)
+	}
 	return list
 }
+
+// learned says what a sample of the run told beforehand.
+func learned(l survey.Learned) (list []string) {
+	switch {
+	case l.NoiseChannels > 0 && l.Gain > 0:
+		list = append(list, fmt.Sprintf("Noise, from the scatter of %s: gain %s electrons per count, read noise %s counts.", plural(l.Pixels, "pixel"), significant(l.Gain), significant(l.ReadNoise)))
+	case l.NoiseChannels > 0:
+		list = append(list, fmt.Sprintf("Noise, from the scatter of %s: %s counts, whatever the light.", plural(l.Pixels, "pixel"), significant(l.ReadNoise)))
+	}
+	if l.Inflation > 1 {
+		list = append(list, fmt.Sprintf("The noise of neighbouring channels is correlated (%s): standard errors are %s times what independent channels would give.", significant(l.Correlation[0]), significant(math.Sqrt(l.Inflation))))
+	}
+	for _, b := range l.Bands {
+		if b.Discrepancy > 0 {
+			list = append(list, fmt.Sprintf("The %s band differs from its shape by some %s of its height, which widens its errors.", b.Name, percent(b.Discrepancy)))
+		}
+		if b.Name == "d" {
+			list = append(list, fmt.Sprintf("D, where too weak to be located, is sought at %.1f ± %.1f cm⁻¹, width %.1f ± %.1f cm⁻¹, as in the %s that show it clearly.", b.Position, b.PositionSpread, b.Width, b.WidthSpread, plural(b.Pixels, "pixel")))
+		}
+	}
+	return list
+}
+
+func percent(v float64) string { return significant(100*v) + " %" }
