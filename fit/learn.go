@@ -118,7 +118,11 @@ func (l *look) take(f *Fitter, counts []float32) {
 		for k := range w.Bands {
 			b := clearBand{position: nan}
 			if i := w.problem.Band(k); ok && w.found[k] && w.values[i] > clearly*w.se(i) {
-				b = clearBand{w.values[i+line.Position], w.se(i + line.Position), w.values[i+line.Width], w.se(i + line.Width), w.misfits[k]}
+				misfit := w.misfits[k]
+				if w.makeups != nil && w.makeups.components > 1 {
+					misfit.white = 0 // of several lines: says nothing of the shape of one
+				}
+				b = clearBand{w.values[i+line.Position], w.se(i + line.Position), w.values[i+line.Width], w.se(i + line.Width), misfit}
 			}
 			l.bands = append(l.bands, b)
 		}

@@ -18,6 +18,7 @@ import (
 type makeups struct {
 	components int     // 1, 2 or 4
 	evidence   float64 // by how much the AICc of the next best description is higher
+	chi2       float64 // of the chosen description, reduced
 
 	tries  []*try
 	solver *lsq.Solver
@@ -36,6 +37,7 @@ type try struct {
 	lo, hi   []float64
 	free     []bool
 	evidence float64 // AICc
+	chi2     float64 // reduced
 }
 
 // makeupDiscrepancy is the ε of makeups: how far, as a fraction of the height, one line may differ from its shape before
@@ -95,12 +97,13 @@ func (m *makeups) choose(w *window) {
 		}
 		fall := max(0, chi1-res.Sum) / scale
 		count := float64(t.problem.Len())
+		t.chi2 = res.Sum / scale * w.noise.inflation() / max(float64(points)-count, 1)
 		t.evidence = -fall/(1+makeupDiscrepancy*makeupDiscrepancy*norm/scale) + 2*count + 2*count*(count+1)/(float64(points)-count-1)
 		if t.evidence < best.evidence-convincing {
 			best = t
 		}
 	}
-	m.components = best.n
+	m.components, m.chi2 = best.n, best.chi2
 	m.evidence = math.Inf(1)
 	for _, t := range m.tries {
 		if t != best {

@@ -16,7 +16,7 @@ func CountStatus(values []float32, bands []string) []StatusCount {
 		{"cosmic ray", "channels hit by cosmic rays were left out", 0},
 		{"channels missing", "channels without counts, or saturated, were left out", 0},
 		{"several starts", "the first fit was poor; the best of several starts stands", 0},
-		{"poor fit", "reduced chi-square above the recipe's limit; so it must be where the 2D band of two or more layers is fitted by one Lorentzian", 0},
+		{"poor fit", "reduced chi-square above the recipe's limit, of several lines too where the 2D band is better described by them", 0},
 		{"not fitted", "too few channels, or no noise, in a window", 0},
 	}
 	for _, b := range bands {

@@ -126,7 +126,8 @@ func (w *window) fit(counts []float32) bool {
 	loaded := w.status
 	w.start(0, 1)
 	w.refine()
-	if w.chi2 > w.recipe.PoorFit && w.anyFound() {
+	poor := w.poor()
+	if poor && w.anyFound() {
 		// The search for a start can be misled by a spike, by a neighbour, or by a width far from the profiles tried.
 		for _, try := range []struct {
 			rank  int
@@ -142,18 +143,27 @@ func (w *window) fit(counts []float32) bool {
 			}
 			w.status |= Retried
 		}
+		poor = w.poor()
 	}
-	if w.chi2 > w.recipe.PoorFit {
+	if poor {
 		w.status |= Poor
 	}
 	if w.spikeChannels() > 0 {
 		w.status |= Spiked
 	}
-	if w.makeups != nil && w.found[0] {
-		w.makeups.choose(w)
-	}
 	w.errors()
 	return true
+}
+
+// poor tells whether chi-square is above the recipe's limit, for one line and, where the band may be of several, for those that
+// describe it best. It chooses them on the way.
+func (w *window) poor() bool {
+	chi2 := w.chi2
+	if w.makeups != nil && w.found[0] {
+		w.makeups.choose(w)
+		chi2 = w.makeups.chi2
+	}
+	return chi2 > w.recipe.PoorFit
 }
 
 // load takes over the counts and sets aside what cannot be used. It reports false where too little is left, or where the
