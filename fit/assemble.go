@@ -51,11 +51,14 @@ func (f *Fits) Survey() (*survey.Survey, error) {
 	for _, s := range f.slabs {
 		x, y, read = append(x, s.x...), append(y, s.y...), append(read, s.read...)
 	}
-	good := 0
+	good, left := 0, 0
 	for _, ok := range read {
 		if ok {
 			good++
 		}
+	}
+	for _, s := range f.slabs {
+		left += s.left
 	}
 	if good == 0 {
 		return nil, ErrNoPixel
@@ -94,7 +97,8 @@ func (f *Fits) Survey() (*survey.Survey, error) {
 			unread++
 		}
 	}
-	s.Pixels.Repeated = len(x) - onCell - unread
+	unread -= left
+	s.Pixels.Repeated, s.Pixels.Excluded = len(x)-onCell-unread-left, left
 	f.maps(s, chosen)
 	s.Pixels.Failed = unread
 	status := s.Map("status")

@@ -8,17 +8,18 @@ import (
 
 // A Fitter fits spectra by a plan. It owns all scratch memory and allocates nothing per pixel; each worker has its own.
 type Fitter struct {
-	plan    *Plan
-	windows []*window
-	grad    []float64 // of a quantity by a window's parameters
-	other   []float64
+	plan     *Plan
+	preparer *preparer
+	windows  []*window
+	grad     []float64 // of a quantity by a window's parameters
+	other    []float64
 }
 
 // NewFitter returns a fitter for the plan.
 func NewFitter(plan *Plan) *Fitter {
-	f := &Fitter{plan: plan}
+	f := &Fitter{plan: plan, preparer: newPreparer(plan.Preparation, plan.Detector, len(plan.Axis))}
 	for i := range plan.windows {
-		w := newWindow(&plan.windows[i], &plan.Recipe, plan.Detector, plan.noise)
+		w := newWindow(&plan.windows[i], &plan.Recipe, plan.noise)
 		f.windows = append(f.windows, w)
 		f.grad = append(f.grad, make([]float64, max(0, len(w.p)-len(f.grad)))...)
 	}
@@ -28,7 +29,7 @@ func NewFitter(plan *Plan) *Fitter {
 
 // Fit fits one spectrum: counts has a value for each channel of the plan's axis, in the axis's order, NaN where there is none.
 // It stores the plan's columns in v and their standard errors in se, NaN where there is none. It reports whether every window
-// was fitted.
+// was fitted. It panics where counts are not as long as the axis.
 func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 	for i := range v {
 		v[i], se[i] = float32(nan), float32(nan)
@@ -36,8 +37,9 @@ func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 	status := Converged
 	var sum, weight float64
 	spikes := 0
+	f.preparer.take(counts)
 	for _, w := range f.windows {
-		if !w.fit(counts) {
+		if !w.fit(f.preparer) {
 			status = status&^Converged | w.status
 			for _, bit := range w.bits {
 				status |= Absent(bit)

@@ -47,6 +47,16 @@ func (p *Plan) Learn(ctx context.Context, sample []scan.Pixel, workers int) (*Pl
 		q.learnNoise(looks)
 	}
 	q.windows = slices.Clone(p.windows)
+	if p.Recipe.Substrate {
+		q.learnSubstrate(sample, looks)
+		if len(q.Learned.Substrate) > 0 { // what was the substrate's looked like noise before
+			var err error
+			if looks, err = q.look(ctx, sample, workers); err != nil {
+				return nil, err
+			}
+			q.learnNoise(looks)
+		}
+	}
 	for i := range q.windows {
 		q.windows[i].Bands = slices.Clone(q.windows[i].Bands)
 		q.windows[i].discrepancy = slices.Clone(q.windows[i].discrepancy)
@@ -86,6 +96,7 @@ func (p *Plan) look(ctx context.Context, sample []scan.Pixel, workers int) ([]lo
 type look struct {
 	fits     int
 	channels int
+	bare     bool // no band that is searched for is found
 	levels   [levels]levelSum
 	products [lags]float64 // of standardised residuals, per lag
 	made     [lags]float64 // what the fit makes of white noise, times -1
@@ -113,9 +124,13 @@ func levelOf(m float64) int {
 
 // take looks at one pixel.
 func (l *look) take(f *Fitter, counts []float32) {
+	f.preparer.take(counts)
+	l.bare = true
 	for _, w := range f.windows {
-		ok := w.fit(counts)
+		ok := w.fit(f.preparer)
+		l.bare = l.bare && ok
 		for k := range w.Bands {
+			l.bare = l.bare && !(w.Bands[k].Search && w.found[k])
 			b := clearBand{position: nan}
 			if i := w.problem.Band(k); ok && w.found[k] && w.values[i] > clearly*w.se(i) {
 				misfit := w.misfits[k]
@@ -149,10 +164,11 @@ func (l *look) residuals(w *window) {
 			continue
 		}
 		d := w.problem.Y[i] - m
-		b := &l.levels[levelOf(m)]
+		seen, s := w.measured(i, m), w.scale[i]
+		b := &l.levels[levelOf(seen)]
 		b.n++
-		b.value += m
-		b.square += d * d
+		b.value += seen
+		b.square += d * d / (s * s)
 		b.leverage += leverage[i]
 		l.channels++
 		w.r[i] = d / w.sigma[i]

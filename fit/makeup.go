@@ -59,7 +59,7 @@ func newMakeups(w *windowPlan) *makeups {
 		{n: 2, offsets: []float64{-0.25, 0.25}, heights: []float64{0.6, 0.6}, width: 0.7},
 		{n: 4, offsets: []float64{-0.85, -0.19, 0.19, 0.48}, heights: []float64{0.2, 0.65, 0.7, 0.25}, width: 0.46},
 	} {
-		t.problem = lsq.NewMultiplet(w.x, w.Background, t.n, w.shapes[0])
+		t.problem = lsq.NewMultiplet(w.x, w.basis, t.n, w.shapes[0])
 		n := t.problem.Len()
 		most = max(most, n)
 		t.p, t.lo, t.hi, t.free = make([]float64, n), make([]float64, n), make([]float64, n), make([]bool, n)
@@ -142,7 +142,7 @@ func (w *window) rootWeights(dst []float64) (points int) {
 	for i, m := range w.curve {
 		dst[i] = 0
 		if !w.skip[i] {
-			dst[i] = 1 / math.Sqrt(w.noise.variance(m))
+			dst[i] = 1 / math.Sqrt(w.variance(i, m))
 			points++
 		}
 	}
@@ -154,7 +154,7 @@ func (w *window) makeupScale() float64 {
 	scale := 1.0
 	if !w.noise.known {
 		for i, m := range w.curve {
-			w.r[i] = math.Sqrt(w.noise.variance(m))
+			w.r[i] = math.Sqrt(w.variance(i, m))
 		}
 		if s := clean.Noise(w.problem.Y, w.r, w.skip, w.scratch); s > 0 {
 			scale = s * s / w.noise.second()

@@ -20,7 +20,7 @@ func makeupsOf(t *testing.T, n int, material synth.Object, signal synth.Signal, 
 	if err != nil {
 		t.Fatal(err)
 	}
-	sample, err := fit.Sample(t.Context(), scene.Scan(), 0)
+	sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -7,6 +7,7 @@ import (
 	"slices"
 
 	"bandgrid/fit/line"
+	"bandgrid/fit/lsq"
 	"bandgrid/mapio/scan"
 	"bandgrid/mapio/survey"
 )
@@ -88,10 +89,12 @@ type Plan struct {
 	Axis     scan.Axis
 	Laser    float64 // nm
 	Detector Detector
-	Columns  []Column        // what the fit gives, in order; the last three are chi2, spikes and status
-	Lacks    []string        // names of the recipe's windows that the axis does not cover
-	Warnings []string        // bands that are missing in windows that it does cover
-	Learned  *survey.Learned // what the run told of itself; nil before [Plan.Learn]
+	Columns  []Column // what the fit gives, in order; the last three are chi2, spikes and status
+	Lacks    []string // names of the recipe's windows that the axis does not cover
+	Warnings []string // bands that are missing in windows that it does cover
+	// Preparation is done to every spectrum first; set it before [Plan.Learn].
+	Preparation Preparation
+	Learned     *survey.Learned // what the run told of itself; nil before [Plan.Learn]
 
 	windows []windowPlan
 	noise   noise
@@ -105,6 +108,7 @@ type windowPlan struct {
 	bits     []int     // number of each band in the recipe
 	ratios   []ratioPlan
 	shapes   []line.Shape
+	basis    [][]float64 // functions of the background: powers, and what the bare substrate shows beside them
 	// discrepancy of each band's shape, a fraction of its height: the recipe's, or what the run shows
 	discrepancy []float64
 	weak        []weak // what stands in for each band where it is too weak to be located
@@ -216,6 +220,7 @@ func (w *windowPlan) cut(axis scan.Axis) {
 }
 
 func (p *Plan) addWindow(w windowPlan) {
+	w.basis = lsq.Polynomial(w.x, w.Background)
 	w.weaken()
 	w.makeup = -1
 	for _, b := range w.Bands {

@@ -29,6 +29,9 @@ type Recipe struct {
 	// InstrumentWidth is the FWHM of the spectrometer's line, taken as Gaussian. Where it is known, Lorentzian bands are fitted
 	// as seen through it, so that their widths are the natural ones. 0: not known, widths are as measured.
 	InstrumentWidth float64 `json:"instrument_width_cm-1"`
+	// Substrate asks for what the bare pixels of the map show beside the background, such as lines of silicon or of the air, as a
+	// further term of the background.
+	Substrate bool `json:"substrate"`
 	// PoorFit is the reduced chi-square of a window above which further starts are tried and the pixel is marked.
 	PoorFit float64 `json:"poor_fit"`
 }
@@ -107,6 +110,7 @@ func Graphene() Recipe {
 		},
 		SpikeThreshold: 6,
 		Discrepancy:    0.002,
+		Substrate:      true,
 		PoorFit:        2,
 	}
 }

@@ -13,8 +13,31 @@ import (
 // RunOptions steer [Run]; the zero value works.
 type RunOptions struct {
 	Workers int // goroutines that decode and fit; default: as many as there are processors
+	// FlipX and FlipY turn the sign of the stage positions, for a stage whose axes run the other way.
+	FlipX, FlipY bool
+	// Leave, where not nil, says which places are left out, um, after the flip: metal, tape. It is called from several goroutines.
+	Leave func(x, y float64) bool
 	// Progress is called after each block with the number of pixels in it, from several goroutines.
 	Progress func(pixels int)
+}
+
+func (o *RunOptions) workers() int {
+	if o.Workers <= 0 {
+		return runtime.GOMAXPROCS(0)
+	}
+	return o.Workers
+}
+
+// place returns where a pixel lies, and whether it is left out.
+func (o *RunOptions) place(p *scan.Pixel) (x, y float64, left bool) {
+	x, y = p.X, p.Y
+	if o.FlipX {
+		x = -x
+	}
+	if o.FlipY {
+		y = -y
+	}
+	return x, y, o.Leave != nil && o.Leave(x, y)
 }
 
 // Fits holds what [Run] found, a row per pixel in order of acquisition, until [Fits.Survey] lays it out on the grid.
@@ -28,7 +51,8 @@ type Fits struct {
 type slab struct {
 	seq      int
 	x, y     []float64
-	read     []bool      // the pixel could be read
+	read     []bool      // the pixel could be read, and is not left out
+	left     int         // pixels that are left out
 	last     bool        // the run ends inside the last pixel's last line
 	columns  [][]float32 // values, then standard errors, of each of the plan's columns
 	problems []*scan.InputError
@@ -38,17 +62,13 @@ type slab struct {
 // workers is in memory. When the stream ends with an error, or ctx is done, that error is returned together with what was
 // fitted until then.
 func Run(ctx context.Context, sc *scan.Scan, plan *Plan, opt RunOptions) (*Fits, error) {
-	n := opt.Workers
-	if n <= 0 {
-		n = runtime.GOMAXPROCS(0)
-	}
 	fits := &Fits{plan: plan}
 	blocks := make(chan scan.Block)
 	var lock sync.Mutex
 	var workers sync.WaitGroup
-	for range n {
+	for range opt.workers() {
 		workers.Go(func() {
-			w := worker{fitter: NewFitter(plan), quantities: len(plan.Columns)}
+			w := worker{opt: &opt, fitter: NewFitter(plan), quantities: len(plan.Columns)}
 			for block := range blocks {
 				s := w.block(block)
 				lock.Lock()
@@ -75,6 +95,7 @@ func Run(ctx context.Context, sc *scan.Scan, plan *Plan, opt RunOptions) (*Fits,
 
 // A worker fits blocks. Its rows are scratch memory that grows to the largest block.
 type worker struct {
+	opt        *RunOptions
 	fitter     *Fitter
 	quantities int
 	rows       []float32 // values and standard errors of each pixel, one after the other
@@ -86,13 +107,20 @@ func (w *worker) block(block scan.Block) *slab {
 	q := w.quantities
 	for pixel, err := range block.Pixels() {
 		i := len(s.x)
-		s.x, s.y, s.read = append(s.x, pixel.X), append(s.y, pixel.Y), append(s.read, err == nil)
+		x, y, left := w.opt.place(pixel)
+		s.x, s.y, s.read = append(s.x, x), append(s.y, y), append(s.read, err == nil && !left)
 		w.rows = slices.Grow(w.rows, 2*q)[:len(w.rows)+2*q]
 		row := w.rows[2*q*i:]
-		if err != nil {
+		if err != nil || left {
 			for k := range row {
 				row[k] = float32(nan)
 			}
+		}
+		if left {
+			s.left++
+			continue
+		}
+		if err != nil {
 			problem, ok := errors.AsType[*scan.InputError](err)
 			if !ok {
 				problem = &scan.InputError{What: "the pixel cannot be read", Err: err, Remedy: "the pixel is left out"}

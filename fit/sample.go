@@ -5,7 +5,6 @@ import (
 	"context"
 	"iter"
 	"math"
-	"runtime"
 	"slices"
 	"sync"
 	"sync/atomic"
@@ -19,21 +18,18 @@ const SampleSize = 1000
 
 // Sample reads a scan to its end and returns up to SampleSize pixels, spread over the map by chance. Which ones depends on
 // their places alone, not on the order in which they were acquired or on the form of the file: they are those with the
-// smallest hashes of their coordinates. Pixels that cannot be read are left out; an error that ends the stream is returned with
+// smallest hashes of their coordinates. Pixels that cannot be read or that the options leave out do not count; an error that ends the stream is returned with
 // the pixels found until then.
-func Sample(ctx context.Context, sc *scan.Scan, workers int) ([]scan.Pixel, error) {
-	if workers <= 0 {
-		workers = runtime.GOMAXPROCS(0)
-	}
+func Sample(ctx context.Context, sc *scan.Scan, opt RunOptions) ([]scan.Pixel, error) {
 	var kept smallest
 	kept.limit.Store(math.MaxUint64)
 	blocks := make(chan scan.Block)
 	var wait sync.WaitGroup
-	for range workers {
+	for range opt.workers() {
 		wait.Go(func() {
 			for block := range blocks {
 				for pixel, err := range block.Pixels() {
-					if err == nil {
+					if _, _, left := opt.place(pixel); err == nil && !left {
 						kept.offer(pixel)
 					}
 				}
@@ -58,7 +54,7 @@ func Sample(ctx context.Context, sc *scan.Scan, workers int) ([]scan.Pixel, erro
 
 // Head reads the first pixels of a scan that cannot be read twice, up to SampleSize of them or a little more, and returns them
 // with a scan that yields all pixels, these first.
-func Head(ctx context.Context, sc *scan.Scan) ([]scan.Pixel, *scan.Scan) {
+func Head(ctx context.Context, sc *scan.Scan, opt RunOptions) ([]scan.Pixel, *scan.Scan) {
 	next, stop := iter.Pull2(sc.Blocks(ctx))
 	rest := &replay{next: next, stop: stop}
 	var sample []scan.Pixel
@@ -71,7 +67,7 @@ func Head(ctx context.Context, sc *scan.Scan) ([]scan.Pixel, *scan.Scan) {
 		read := &readBlock{seq: block.Seq()}
 		for pixel, err := range block.Pixels() {
 			read.pixels, read.errors = append(read.pixels, clonePixel(pixel)), append(read.errors, err)
-			if err == nil {
+			if _, _, left := opt.place(pixel); err == nil && !left {
 				sample = append(sample, read.pixels[len(read.pixels)-1])
 			}
 		}

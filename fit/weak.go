@@ -28,16 +28,7 @@ func (w *windowPlan) weaken() {
 	if len(w.x) < 2 {
 		return
 	}
-	powers := make([][]float64, 0, w.Background+1)
-	mid, half := (w.From+w.To)/2, (w.To-w.From)/2
-	for k := range w.Background + 1 {
-		power := make([]float64, len(w.x))
-		for i, x := range w.x {
-			power[i] = math.Pow((x-mid)/half, float64(k))
-		}
-		powers = append(powers, power)
-	}
-	basis := orthonormal(powers)
+	basis := orthonormal(w.basis)
 	for k, b := range w.Bands {
 		w.weak = append(w.weak, newWeak(b, w.shapes[k], w.x, basis))
 	}

@@ -18,7 +18,6 @@ import (
 // nothing changes any more.
 type window struct {
 	*windowPlan
-	detector Detector
 	noise    noise
 	recipe   *Recipe
 	problem  *lsq.Bands
@@ -30,8 +29,9 @@ type window struct {
 	p, lo, hi, before []float64
 	free              []bool
 	found, barred     []bool
-	holes             []bool // channels without a usable count
-	skip, sharp       []bool // channels left out: holes and spikes; spikes that were marked before the fit
+	holes             []bool    // channels without a usable count
+	scale, removed    []float64 // how the counts were prepared, see preparer
+	skip, sharp       []bool    // channels left out: holes and spikes; spikes that were marked before the fit
 	bridged           []float64
 	curve, sigma, r   []float64
 	scratch           []float64
@@ -70,14 +70,14 @@ const (
 	settled = 3e-3
 )
 
-func newWindow(w *windowPlan, recipe *Recipe, detector Detector, noise noise) *window {
+func newWindow(w *windowPlan, recipe *Recipe, noise noise) *window {
 	n, bands := len(w.x), len(w.Bands)
-	problem := lsq.NewBands(w.x, w.Background, w.shapes...)
+	problem := lsq.NewBandsOver(w.x, w.basis, w.shapes...)
 	params := problem.Len()
 	f := func(n int) []float64 { return make([]float64, n) }
 	b := func(n int) []bool { return make([]bool, n) }
 	win := &window{
-		windowPlan: w, detector: detector, noise: noise, recipe: recipe, problem: problem, solver: lsq.NewSolver(params), strong: b(n),
+		windowPlan: w, noise: noise, recipe: recipe, problem: problem, solver: lsq.NewSolver(params), strong: b(n),
 		p: f(params), lo: f(params), hi: f(params), before: f(params), free: b(params), cov: f(params * params), raw: f(params * params),
 		found: b(bands), barred: b(bands), holes: b(n), skip: b(n), sharp: b(n),
 		bridged: f(n), curve: f(n), sigma: f(n), r: f(n), scratch: f(n),
@@ -88,6 +88,7 @@ func newWindow(w *windowPlan, recipe *Recipe, detector Detector, noise noise) *w
 	for i := range win.lo {
 		win.lo[i], win.hi[i] = math.Inf(-1), math.Inf(1)
 	}
+	win.scale, win.removed = f(n), f(n)
 	win.misfits = make([]misfit, bands)
 	for range bands {
 		win.along = append(win.along, make([][modes]float64, params))
@@ -101,7 +102,7 @@ func newWindow(w *windowPlan, recipe *Recipe, detector Detector, noise noise) *w
 		win.lo[i+line.Width], win.hi[i+line.Width] = min(max(band.Widths[0], 2*spacing), band.Width), band.Widths[1]
 		var l *locator
 		if band.Search {
-			l = newLocator(w.x, problem.Powers(), band, w.shapes[k])
+			l = newLocator(w.x, w.basis, band, w.shapes[k])
 			for c, x := range w.x {
 				win.strong[c] = win.strong[c] || x >= win.lo[i+line.Position] && x <= win.hi[i+line.Position]
 			}
@@ -117,9 +118,9 @@ func newWindow(w *windowPlan, recipe *Recipe, detector Detector, noise noise) *w
 	return win
 }
 
-// fit fits the window to a pixel's counts and reports whether there is a result: in w.p, w.cov, w.phi, w.chi2, w.found.
-func (w *window) fit(counts []float32) bool {
-	if !w.load(counts) {
+// fit fits the window to a prepared spectrum and reports whether there is a result: in w.p, w.cov, w.phi, w.chi2, w.found.
+func (w *window) fit(q *preparer) bool {
+	if !w.load(q) {
 		w.status = Unfit
 		return false
 	}
@@ -168,27 +169,32 @@ func (w *window) poor() bool {
 
 // load takes over the counts and sets aside what cannot be used. It reports false where too little is left, or where the
 // counts do not scatter at all, as in a channel-less or made-up spectrum: such a fit would claim errors of zero.
-func (w *window) load(counts []float32) bool {
+func (w *window) load(q *preparer) bool {
 	w.status = 0
-	full := math.Inf(1)
-	if w.detector.Saturation > 0 {
-		full = w.detector.Saturation
-	}
 	good := 0
 	for i, c := range w.channels {
-		v := float64(counts[c])
-		w.holes[i] = !(math.Abs(v) < math.MaxFloat32) || v >= full
-		if w.holes[i] {
-			v = 0
-		} else {
+		w.holes[i], w.scale[i] = q.holes[c], q.scale[c]
+		if !w.holes[i] {
 			good++
 		}
-		w.problem.Y[i] = v
+		w.problem.Y[i] = q.counts[c]
+		if q.removed != nil {
+			w.removed[i] = q.removed[c]
+		}
 	}
 	if good < len(w.holes) {
 		w.status |= Holes
 	}
 	return good >= 2*len(w.p) && w.suspect(false)
+}
+
+// measured returns the counts as the detector saw them where the prepared value of channel i is m: noise is a matter of those.
+func (w *window) measured(i int, m float64) float64 { return m/w.scale[i] + w.removed[i] }
+
+// variance returns the variance of channel i where its expected value is m, both as prepared.
+func (w *window) variance(i int, m float64) float64 {
+	s := w.scale[i]
+	return s * s * w.noise.variance(w.measured(i, m))
 }
 
 // suspect leaves out the holes, and the channels that look like strong spikes. Where a strong band may be, a narrow one looks
@@ -444,7 +450,7 @@ func (w *window) reweigh() {
 	w.problem.Base(w.scratch, w.p)
 	for i, m := range w.curve {
 		misfit := w.recipe.Discrepancy * (m - w.scratch[i])
-		w.sigma[i] = math.Sqrt(w.noise.variance(m) + misfit*misfit)
+		w.sigma[i] = math.Sqrt(w.variance(i, m) + misfit*misfit)
 	}
 	w.weigh()
 }

@@ -9,6 +9,7 @@ import (
 	"os"
 	"path/filepath"
 	"runtime/debug"
+	"slices"
 	"strings"
 	"time"
 
@@ -18,6 +19,7 @@ import (
 	"bandgrid/fit/carbon"
 	"bandgrid/fit/region"
 	"bandgrid/mapio"
+	"bandgrid/mapio/area"
 	"bandgrid/mapio/scan"
 	"bandgrid/mapio/survey"
 )
@@ -56,12 +58,17 @@ type surveyOptions struct {
 	gain        float64
 	readNoise   float64
 	instrument  float64
+	dark        float64
+	flip        []string
+	exclude     string
 	saturation  float64
 	notes       map[string]string
 	table       bool
 	workers     int
 	force       bool
 	quiet       bool
+
+	places fit.RunOptions // from workers, flip and exclude
 }
 
 func (o *surveyOptions) add(fs *pflag.FlagSet) {
@@ -78,6 +85,9 @@ func (o *surveyOptions) add(fs *pflag.FlagSet) {
 	fs.Float64Var(&o.gain, "gain", 0, "detector gain in `electrons` per count (default: from the scatter of the run)")
 	fs.Float64Var(&o.readNoise, "read-noise", 0, "scatter of a channel without light, in `counts`; with --gain")
 	fs.Float64Var(&o.instrument, "instrument-width", 0, "FWHM of the spectrometer's line in `cm-1`, where known: widths are then the natural ones")
+	fs.Float64Var(&o.dark, "dark", 0, "`counts` that the detector gives without light, taken off every channel")
+	fs.StringSliceVar(&o.flip, "flip", nil, "stage axis that runs the other way: `x`, y, or x,y")
+	fs.StringVar(&o.exclude, "exclude", "", "`file` with polygons to leave out (metal, tape): lines name,x,y, a vertex each, um")
 	fs.Float64Var(&o.saturation, "saturation", 0, "`counts` from which on a channel is full and left out")
 	fs.StringToStringVar(&o.notes, "note", nil, "`KEY=VALUE` for survey and report: sample, power, exposure ...")
 	fs.BoolVar(&o.table, "table", false, "write pixels.csv too: all quantities, a row per pixel")
@@ -122,6 +132,9 @@ func (o *surveyOptions) run(ctx context.Context, runs []string, std streams) err
 	if err := o.check(runs); err != nil {
 		return usageError{err}
 	}
+	if err := o.place(); err != nil {
+		return err
+	}
 	// Results stay in memory until the end, and little else does: a smaller heap costs hardly any time here.
 	defer debug.SetGCPercent(debug.SetGCPercent(40))
 	var failed error
@@ -136,6 +149,37 @@ func (o *surveyOptions) run(ctx context.Context, runs []string, std streams) err
 		}
 	}
 	return failed
+}
+
+// place reads what flags say of the places of pixels.
+func (o *surveyOptions) place() error {
+	o.places = fit.RunOptions{Workers: o.workers}
+	for _, axis := range o.flip {
+		switch axis {
+		case "x":
+			o.places.FlipX = true
+		case "y":
+			o.places.FlipY = true
+		default:
+			return usageError{fmt.Errorf("--flip %s: x, y or x,y is possible", axis)}
+		}
+	}
+	if o.exclude == "" {
+		return nil
+	}
+	f, err := os.Open(o.exclude)
+	if err != nil {
+		return err
+	}
+	defer f.Close()
+	areas, err := area.Read(f, o.exclude)
+	if err != nil {
+		return err
+	}
+	o.places.Leave = func(x, y float64) bool {
+		return slices.ContainsFunc(areas, func(a area.Area) bool { return a.Contains(x, y) })
+	}
+	return nil
 }
 
 // readRecipe returns the recipe to use, flags that change it included.
@@ -285,6 +329,9 @@ func (o *surveyOptions) learn(ctx context.Context, run string, in *inputs) error
 		}
 		sample, err := o.sample(ctx, r.path, r.sc, in.options)
 		if err == nil {
+			if o.dark != 0 {
+				(*r.plan).Preparation.Dark = []float64{o.dark}
+			}
 			*r.plan, err = (*r.plan).Learn(ctx, sample, o.workers)
 		}
 		if err != nil {
@@ -297,7 +344,7 @@ func (o *surveyOptions) learn(ctx context.Context, run string, in *inputs) error
 // sample returns pixels of the run. What is wrong with the run the fit will meet again, and report.
 func (o *surveyOptions) sample(ctx context.Context, path string, sc **scan.Scan, options mapio.Options) ([]scan.Pixel, error) {
 	if info, err := os.Stat(path); path == "-" || err != nil || !info.Mode().IsRegular() {
-		sample, all := fit.Head(ctx, *sc)
+		sample, all := fit.Head(ctx, *sc, o.places)
 		*sc = all
 		return sample, ctx.Err()
 	}
@@ -306,7 +353,7 @@ func (o *surveyOptions) sample(ctx context.Context, path string, sc **scan.Scan,
 		return nil, err
 	}
 	defer again.Close()
-	sample, _ := fit.Sample(ctx, again, o.workers)
+	sample, _ := fit.Sample(ctx, again, o.places)
 	return sample, ctx.Err()
 }
 
@@ -342,7 +389,7 @@ func (o *surveyOptions) fitAll(ctx context.Context, in inputs, std streams) (s *
 
 // fitRun fits one run; see fitAll.
 func (o *surveyOptions) fitRun(ctx context.Context, sc *scan.Scan, plan *fit.Plan, std streams) (s *survey.Survey, broken, stopped error) {
-	run := fit.RunOptions{Workers: o.workers}
+	run := o.places
 	if std.terminal && !o.quiet {
 		p := startProgress(time.Second/2, sc.Progress, terminalLine(std.err))
 		run.Progress = p.Add
@@ -412,10 +459,17 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 	for name, v := range map[string]float64{
 		"oxide_nm": o.oxide, "spot_um": o.spot, "min_area_um2": o.minArea,
 		"gain_e_per_count": o.gain, "read_noise_counts": o.readNoise, "saturation_counts": o.saturation,
+		"instrument_width_cm-1": o.instrument, "dark_counts": o.dark,
 	} {
 		if v > 0 {
 			s.Settings[name] = v
 		}
+	}
+	if len(o.flip) > 0 {
+		s.Settings["flip"] = strings.Join(o.flip, ",")
+	}
+	if o.exclude != "" {
+		s.Settings["exclude"] = filepath.Base(o.exclude)
 	}
 	s.Notes = map[string]string{}
 	maps.Copy(s.Notes, in.first.Notes)

@@ -6,16 +6,13 @@ import (
 	"bandgrid/fit/line"
 )
 
-// channels are the data of a window and the background under its bands, a polynomial.
-//
-// The background's variable is t = (x - middle)/half-width of the channels given, so t runs from -1 to 1 and the coefficients
-// have the unit of counts.
+// channels are the data of a window and the background under its bands, a sum of given functions.
 type channels struct {
 	X     []float64 // shift of each channel, cm-1, ascending
 	Y     []float64 // counts; any finite value where the weight is zero
 	RootW []float64 // square root of each channel's weight; change it with SetWeights
 
-	powers  [][]float64 // t^k
+	basis   [][]float64 // functions of the background
 	columns [][]float64 // weighted derivatives by each parameter, those of the background first
 	used    [][]float64 // the columns of the free parameters
 	curve   []float64
@@ -23,38 +20,45 @@ type channels struct {
 	resid   []float64
 }
 
-// newChannels makes room for a background of that order and a number of further parameters.
-func newChannels(x []float64, order, further int) channels {
+// newChannels makes room for a background of those functions and a number of further parameters.
+func newChannels(x []float64, background [][]float64, further int) channels {
 	n := len(x)
 	v := func() []float64 { return make([]float64, n) }
-	c := channels{X: x, Y: v(), RootW: v(), curve: v(), profile: v(), resid: v()}
-	mid, half := (x[0]+x[n-1])/2, (x[n-1]-x[0])/2
-	for k := range order + 1 {
-		power := v()
-		for i, at := range x {
-			power[i] = 1
-			if k > 0 {
-				power[i] = c.powers[k-1][i] * (at - mid) / half
-			}
-		}
-		c.powers = append(c.powers, power)
-	}
-	for range order + 1 + further {
+	c := channels{X: x, Y: v(), RootW: v(), basis: background, curve: v(), profile: v(), resid: v()}
+	for range len(background) + further {
 		c.columns = append(c.columns, v())
 	}
 	c.used = make([][]float64, 0, len(c.columns))
 	return c
 }
 
-// Background is the number of background coefficients; they are the first parameters.
-func (c *channels) Background() int { return len(c.powers) }
+// Polynomial returns the powers 0 to order of t = (x - middle)/half-width of the channels given: t runs from -1 to 1, and
+// the coefficients of a background have the unit of counts.
+func Polynomial(x []float64, order int) [][]float64 {
+	var powers [][]float64
+	mid, half := (x[0]+x[len(x)-1])/2, (x[len(x)-1]-x[0])/2
+	for k := range order + 1 {
+		power := make([]float64, len(x))
+		for i, at := range x {
+			power[i] = 1
+			if k > 0 {
+				power[i] = powers[k-1][i] * (at - mid) / half
+			}
+		}
+		powers = append(powers, power)
+	}
+	return powers
+}
 
-// Powers returns the background's basis functions, one slice per coefficient. Read only.
-func (c *channels) Powers() [][]float64 { return c.powers }
+// Background is the number of background coefficients; they are the first parameters.
+func (c *channels) Background() int { return len(c.basis) }
+
+// Basis returns the background's functions, one slice per coefficient. Read only.
+func (c *channels) Basis() [][]float64 { return c.basis }
 
 // SetWeights must be called after RootW was changed.
 func (c *channels) SetWeights() {
-	for k, power := range c.powers {
+	for k, power := range c.basis {
 		floats.MulTo(c.columns[k], power, c.RootW)
 	}
 }
@@ -62,7 +66,7 @@ func (c *channels) SetWeights() {
 // Base stores the background at p in dst.
 func (c *channels) Base(dst, p []float64) {
 	clear(dst)
-	for k, power := range c.powers {
+	for k, power := range c.basis {
 		floats.AddScaled(dst, p[k], power)
 	}
 }
@@ -92,7 +96,7 @@ func (c *channels) project(g []float64, free []bool) {
 	}
 }
 
-// Bands is a sum of bands over a polynomial background. Its parameters are the background's coefficients, lowest power first,
+// Bands is a sum of bands over a background. Its parameters are the background's coefficients, in the order of its functions,
 // then those of each band's shape: height, position, width, and what else it has.
 type Bands struct {
 	channels
@@ -101,15 +105,22 @@ type Bands struct {
 	templates [][]float64 // profile of unit height that stands in for a band, or nil
 }
 
-// NewBands returns the problem for channels at x with a background of that order and bands of those shapes.
+// NewBands returns the problem for channels at x with a polynomial background of that order, see [Polynomial], and bands of those
+// shapes.
 func NewBands(x []float64, order int, shapes ...line.Shape) *Bands {
+	return NewBandsOver(x, Polynomial(x, order), shapes...)
+}
+
+// NewBandsOver returns the problem for channels at x with a background made of the functions given, each with a value per
+// channel. They are used, not copied.
+func NewBandsOver(x []float64, background [][]float64, shapes ...line.Shape) *Bands {
 	b := &Bands{shapes: shapes, templates: make([][]float64, len(shapes))}
 	n := 0
 	for _, s := range shapes {
-		b.first = append(b.first, order+1+n)
+		b.first = append(b.first, len(background)+n)
 		n += s.Len()
 	}
-	b.channels = newChannels(x, order, n)
+	b.channels = newChannels(x, background, n)
 	return b
 }
 

@@ -6,7 +6,7 @@ import (
 	"bandgrid/fit/line"
 )
 
-// Multiplet is a sum of bands of one shape and one common width over a polynomial background. Its parameters are the
+// Multiplet is a sum of bands of one shape and one common width over a background. Its parameters are the
 // background's coefficients, the common width, then height and position of each component.
 type Multiplet struct {
 	channels
@@ -17,23 +17,23 @@ type Multiplet struct {
 	onlyOf [line.Len][]float64
 }
 
-// NewMultiplet returns the problem of n components for channels at x. The shape has no parameters but height, position and
-// width.
-func NewMultiplet(x []float64, order, n int, shape line.Shape) *Multiplet {
+// NewMultiplet returns the problem of n components for channels at x over a background made of the functions given. The shape has
+// no parameters but height, position and width.
+func NewMultiplet(x []float64, background [][]float64, n int, shape line.Shape) *Multiplet {
 	if shape.Len() != line.Len {
 		panic("lsq: a multiplet's components have height, position and width only")
 	}
-	return &Multiplet{channels: newChannels(x, order, 1+2*n), shape: shape, n: n, byW: make([]float64, len(x))}
+	return &Multiplet{channels: newChannels(x, background, 1+2*n), shape: shape, n: n, byW: make([]float64, len(x))}
 }
 
 // Len is the number of parameters.
 func (m *Multiplet) Len() int { return len(m.columns) }
 
 // Width returns the place of the common width.
-func (m *Multiplet) Width() int { return len(m.powers) }
+func (m *Multiplet) Width() int { return len(m.basis) }
 
 // Component returns the place of the height of component k; its position follows.
-func (m *Multiplet) Component(k int) int { return len(m.powers) + 1 + 2*k }
+func (m *Multiplet) Component(k int) int { return len(m.basis) + 1 + 2*k }
 
 // Normal implements [Problem]. It allocates nothing.
 func (m *Multiplet) Normal(a, g, p []float64, free []bool) float64 {

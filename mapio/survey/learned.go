@@ -9,6 +9,9 @@ type Learned struct {
 	NoiseChannels int       `json:"noise_channels"`                // that gain and read noise come from; 0: as given, or not to be had
 	Correlation   []float64 `json:"channel_correlation,omitempty"` // of the noise of channels 1, 2 ... apart; 0 where chance explains it
 	Inflation     float64   `json:"variance_inflation,omitempty"`  // of the estimates, for that correlation
+	// Bare is how many pixels without film gave the substrate's own spectrum, and Substrate the windows where it shows lines.
+	Bare      int      `json:"bare_pixels,omitempty"`
+	Substrate []string `json:"substrate_lines,omitempty"`
 	// Bands that some pixels show clearly.
 	Bands []LearnedBand `json:"bands,omitempty"`
 }

@@ -29,6 +29,7 @@ type Pixels struct {
 	Failed   int `json:"failed"`   // pixels that could not be read or fitted
 	Repeated int `json:"repeated"` // pixels measured again later in the run: the last complete one counts
 	Missing  int `json:"missing"`  // cells without a pixel
+	Excluded int `json:"excluded"` // pixels left out since they lie in an area that was excluded
 }
 
 // A RunFile says which file a survey was made from.

@@ -215,6 +215,9 @@ func learned(l survey.Learned) (list []string) {
 	if l.Inflation > 1 {
 		list = append(list, fmt.Sprintf("The noise of neighbouring channels is correlated (%s): standard errors are %s times what independent channels would give.", significant(l.Correlation[0]), significant(math.Sqrt(l.Inflation))))
 	}
+	if len(l.Substrate) > 0 {
+		list = append(list, fmt.Sprintf("The bare substrate shows lines of its own in the window %s; their spectrum, from %s, is part of the background.", strings.Join(l.Substrate, ", "), plural(l.Bare, "pixel")))
+	}
 	for _, b := range l.Bands {
 		if b.Discrepancy > 0 {
 			list = append(list, fmt.Sprintf("The %s band differs from its shape by some %s of its height, which widens its errors.", b.Name, percent(b.Discrepancy)))

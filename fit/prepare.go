@@ -1,0 +1,87 @@
+package fit
+
+import (
+	"errors"
+	"fmt"
+	"math"
+)
+
+// A Preparation says what is done to the counts of every pixel before they are fitted. The zero value does nothing.
+type Preparation struct {
+	// Dark is what the detector gives without light: one value for all channels, or one per channel; counts.
+	Dark []float64
+	// Response is the spectrometer's relative sensitivity, one value per channel, above 0: counts are divided by it. The noise is
+	// still that of the counts as measured.
+	Response []float64
+}
+
+// Check returns an error where the preparation does not go with an axis of that many channels.
+func (p Preparation) Check(channels int) error {
+	if n := len(p.Dark); n > 1 && n != channels {
+		return fmt.Errorf("the dark spectrum has %d channels, the run %d", n, channels)
+	}
+	for i, v := range p.Dark {
+		if math.IsNaN(v) || math.IsInf(v, 0) {
+			return fmt.Errorf("dark spectrum: channel %d is %g", i, v)
+		}
+	}
+	if n := len(p.Response); n > 0 && n != channels {
+		return fmt.Errorf("the response has %d channels, the run %d", n, channels)
+	}
+	for i, v := range p.Response {
+		if !(v > 0) || math.IsInf(v, 0) {
+			return fmt.Errorf("response: channel %d is %g; numbers above 0 are needed", i, v)
+		}
+	}
+	return nil
+}
+
+// errChannels is a caller's bug.
+var errChannels = errors.New("fit: counts are not as long as the axis")
+
+// A preparer prepares one spectrum at a time, in memory of its own.
+type preparer struct {
+	full    float64   // counts from which a channel is saturated
+	dark    []float64 // per channel
+	scale   []float64 // one over the response; 1 without
+	counts  []float64 // prepared; 0 where there are none
+	holes   []bool    // channels without a usable count
+	removed []float64 // light that was taken off but makes noise, in counts as measured; nil without
+}
+
+func newPreparer(p Preparation, d Detector, channels int) *preparer {
+	q := &preparer{full: math.Inf(1), dark: make([]float64, channels), scale: make([]float64, channels),
+		counts: make([]float64, channels), holes: make([]bool, channels)}
+	if d.Saturation > 0 {
+		q.full = d.Saturation
+	}
+	for i := range channels {
+		q.scale[i] = 1
+		switch {
+		case len(p.Dark) == 1:
+			q.dark[i] = p.Dark[0]
+		case len(p.Dark) > 1:
+			q.dark[i] = p.Dark[i]
+		}
+		if len(p.Response) > 0 {
+			q.scale[i] = 1 / p.Response[i]
+		}
+	}
+	return q
+}
+
+// take prepares a spectrum. It panics where counts are not as long as the axis.
+func (q *preparer) take(counts []float32) {
+	if len(counts) != len(q.counts) {
+		panic(errChannels)
+	}
+	for i, c := range counts {
+		v := float64(c)
+		q.holes[i] = !(math.Abs(v) < math.MaxFloat32) || v >= q.full
+		if q.holes[i] {
+			q.counts[i] = 0
+			continue
+		}
+		q.counts[i] = (v - q.dark[i]) * q.scale[i]
+	}
+}

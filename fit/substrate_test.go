@@ -1,0 +1,75 @@
+package fit_test
+
+import (
+	"math"
+	"testing"
+
+	"bandgrid/fit"
+	"bandgrid/fit/synth"
+)
+
+// TestSubstrateLines has silicon's third-order band beside D, a fifth as high as G. Taken from the bare pixels it leaves D/G of a
+// pristine film at zero; without, it does not.
+func TestSubstrateLines(t *testing.T) {
+	t.Parallel()
+	mean := map[bool]float64{}
+	for _, use := range []bool{true, false} {
+		scene := &synth.Scene{Seed: 5}
+		scene.Stage = synth.Stage{Cols: 50, Rows: 30, DX: 0.5}
+		scene.Instrument = synth.Instrument{Spot: 0.6, ReadNoise: 4, Background: 300, Channels: 800}
+		scene.Signal = synth.Signal{G: 300, Lines: []synth.Line{{Band: synth.Band{Name: "silicon, third order", Position: 1440, Width: 70, Height: 60}, PerLayer: 0.93}}}
+		scene.Objects = []synth.Object{{Layers: 1, Shape: synth.Shape{Disc: &synth.Disc{X: 8, Y: 7, Radius: 6}}}}
+		if err := scene.Prepare(); err != nil {
+			t.Fatal(err)
+		}
+		recipe := fit.Graphene()
+		recipe.Substrate = use
+		sc := scene.Scan()
+		plan, err := fit.NewPlan(recipe, sc.Axis, sc.Laser, fit.Detector{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if plan, err = plan.Learn(t.Context(), sample, 0); err != nil {
+			t.Fatal(err)
+		}
+		if use != (len(plan.Learned.Substrate) == 1) {
+			t.Errorf("substrate %v: lines seen in windows %v", use, plan.Learned.Substrate)
+		}
+		fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		s, err := fits.Survey()
+		if err != nil {
+			t.Fatal(err)
+		}
+		g := scene.NewGenerator()
+		counts := make([]float32, len(sc.Axis))
+		ratio, se := s.Map("d_g_ratio").Values, s.Map("d_g_ratio").SE
+		var n, sum, sum2, z2 float64
+		for i := range scene.Len() {
+			_, _, tr := g.Pixel(i, counts)
+			if v := float64(ratio[tr.Row*s.Grid.Cols+tr.Col]); tr.LayerNumber == 1 && tr.PureFraction > 0.98 && v == v {
+				e := float64(se[tr.Row*s.Grid.Cols+tr.Col])
+				n++
+				sum += v
+				sum2 += v * v
+				z2 += v * v / (e * e)
+			}
+		}
+		mean[use] = sum / n
+		error := math.Sqrt(sum2/n-mean[use]*mean[use]) / math.Sqrt(n)
+		t.Logf("substrate %v: mean D/G of %.0f pristine pixels %+.5f ± %.5f, pulls %.3f", use, n, mean[use], error, math.Sqrt(z2/n))
+		// The term is known to a twentieth of a pixel's noise, common to all pixels: its own error adds to that of the mean.
+		if use && !(math.Abs(mean[use]) <= 4*error+0.05*error*math.Sqrt(n)) {
+			t.Errorf("mean D/G %+.5f, its standard error is %.5f", mean[use], error)
+		}
+	}
+	if !(math.Abs(mean[false]) > 10*math.Abs(mean[true])) {
+		t.Errorf("without the term the mean is %+.5f, with it %+.5f: it makes no difference here", mean[false], mean[true])
+	}
+}
