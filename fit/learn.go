@@ -130,7 +130,7 @@ func (l *look) take(f *Fitter, counts []float32) {
 		ok := w.fit(f.preparer)
 		l.bare = l.bare && ok
 		for k := range w.Bands {
-			l.bare = l.bare && !(w.Bands[k].Search && w.found[k])
+			l.bare = l.bare && !(w.Bands[k].Search && !w.Bands[k].Narrow && w.found[k])
 			b := clearBand{position: nan}
 			if i := w.problem.Band(k); ok && w.found[k] && w.values[i] > clearly*w.se(i) {
 				misfit := w.misfits[k]

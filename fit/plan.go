@@ -162,7 +162,7 @@ func newPlan(recipe Recipe, axis scan.Axis, laser float64, detector Detector, do
 		for k, b := range w.Bands {
 			b.Position += b.Dispersion * ev
 			if b.Position-b.Width < wp.From || b.Position+b.Width > wp.To {
-				if len(wp.channels) > 0 {
+				if len(wp.channels) > 0 && !w.Optional {
 					p.Warnings = append(p.Warnings, fmt.Sprintf("band %s near %.0f cm-1 is not covered by the axis", b.Name, b.Position))
 				}
 				continue
@@ -173,7 +173,9 @@ func newPlan(recipe Recipe, axis scan.Axis, laser float64, detector Detector, do
 			wp.discrepancy = append(wp.discrepancy, recipe.Discrepancy)
 		}
 		if params := w.Background + 1 + wp.parameters(); len(wp.Bands) == 0 || len(wp.channels) < 3*params {
-			p.Lacks = append(p.Lacks, w.Name)
+			if !w.Optional {
+				p.Lacks = append(p.Lacks, w.Name)
+			}
 			continue
 		}
 		p.addWindow(wp)

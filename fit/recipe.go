@@ -43,6 +43,7 @@ type Window struct {
 	To         float64 `json:"to_cm-1"`
 	Dispersion float64 `json:"dispersion_cm-1_per_eV"` // the window moves with the laser line
 	Background int     `json:"background_order"`       // of the polynomial under the bands: 0 constant, 1 linear ... 4
+	Optional   bool    `json:"optional"`               // nothing is missing where the run does not cover it
 	Bands      []Band  `json:"bands"`
 }
 
@@ -65,6 +66,9 @@ type Band struct {
 	// Detect is the detection limit: height over its standard error. Below it position and width stay at what is expected, and
 	// only the height is estimated.
 	Detect float64 `json:"detection_limit"`
+	// Narrow allows the band to be narrower than two channels, where it could be taken for a cosmic ray: for a line that every
+	// pixel shows.
+	Narrow bool `json:"narrow"`
 	// Makeup asks whether the band, found and alone in its window, is one line, two, or four with a common width.
 	Makeup bool `json:"makeup"`
 }
@@ -77,12 +81,13 @@ type Ratio struct {
 	Denominator string `json:"denominator"` // the ratio is undefined where this band is not found
 }
 
-// Graphene is the built-in recipe: D, G and D' over a linear background, and 2D over another, all Lorentzian.
+// Graphene is the built-in recipe: D, G and D' over a linear background, 2D over another, and the silicon line, all Lorentzian.
 //
 // Positions and dispersions: D 1341 and +50 cm-1/eV, D' 1619 and +10, 2D 2669.9 and +88 (from memory; Phys. Rev. B 61, 14095
 // (2000) and 76, 233407 (2007)); G 1581.6, not dispersive (Nat. Commun. 3, 1024 (2012)). Expected widths of weak bands: the
 // middle of the customary ranges; their spread, and that of positions: common practice. The run itself tells better, see
-// [Plan.Learn]. Detection limits: a false D or D' in one pristine pixel of 30,000, as the one-sided tail of
+// [Plan.Learn]. The first-order line of silicon, where the run covers it: 520.5 ± 0.2 (J. Raman Spectrosc. (2020),
+// https://doi.org/10.1002/jrs.6003). Detection limits: a false D or D' in one pristine pixel of 30,000, as the one-sided tail of
 // the normal distribution; G and 2D are searched for over some tens of places, hence a higher limit.
 func Graphene() Recipe {
 	return Recipe{
@@ -100,6 +105,10 @@ func Graphene() Recipe {
 			{Name: "2d", From: 2550, To: 2850, Dispersion: 88, Background: 1, Bands: []Band{
 				{Name: "2d", Shape: "lorentzian", Position: 2669.9, Dispersion: 88, Width: 30, Spread: [2]float64{8, 6},
 					Shift: [2]float64{-50, 70}, Widths: [2]float64{8, 160}, Search: true, Detect: 5, Makeup: true},
+			}},
+			{Name: "si", From: 480, To: 560, Background: 1, Optional: true, Bands: []Band{
+				{Name: "si", Shape: "lorentzian", Position: 520.5, Width: 4, Spread: [2]float64{1, 1},
+					Shift: [2]float64{-12, 12}, Widths: [2]float64{1, 15}, Search: true, Narrow: true, Detect: 5},
 			}},
 		},
 		Ratios: []Ratio{

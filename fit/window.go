@@ -97,9 +97,7 @@ func newWindow(w *windowPlan, recipe *Recipe, noise noise) *window {
 	for k, band := range w.Bands {
 		i := problem.Band(k)
 		win.lo[i+line.Position], win.hi[i+line.Position] = max(band.Position+band.Shift[0], w.From), min(band.Position+band.Shift[1], w.To)
-		// What is narrower than two channels cannot be told from a cosmic ray. (Undersampled besides: the bound on the position's
-		// error is half as large again there.)
-		win.lo[i+line.Width], win.hi[i+line.Width] = min(max(band.Widths[0], 2*spacing), band.Width), band.Widths[1]
+		win.lo[i+line.Width], win.hi[i+line.Width] = band.narrowest(spacing), band.Widths[1]
 		var l *locator
 		if band.Search {
 			l = newLocator(w.x, w.basis, band, w.shapes[k])
@@ -486,8 +484,24 @@ func (w *window) spikes() bool {
 	for i := range w.r {
 		w.r[i] /= scale
 	}
+	w.spare()
 	cleared := clean.Harmless(w.r, w.recipe.SpikeThreshold, w.sharp, w.skip)
 	return clean.Residual(w.r, w.recipe.SpikeThreshold, w.skip)+cleared > 0
+}
+
+// spare clears the residuals where a band may lie that may be as narrow as a cosmic ray: one spectrum cannot tell the two apart.
+func (w *window) spare() {
+	for k, b := range w.Bands {
+		if !b.Narrow {
+			continue
+		}
+		i := w.problem.Band(k)
+		for c, x := range w.x {
+			if x > w.lo[i+line.Position]-b.Width && x < w.hi[i+line.Position]+b.Width {
+				w.r[c] = 0
+			}
+		}
+	}
 }
 
 // elsewhere looks in the residuals for a band that is not at its expected place. It must stand out by two standard errors more

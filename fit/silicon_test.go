@@ -1,0 +1,86 @@
+package fit_test
+
+import (
+	"math"
+	"testing"
+
+	"bandgrid/fit"
+	"bandgrid/fit/synth"
+)
+
+// TestSiliconLineIsNeverASpike has a silicon line 3 cm-1 wide and 50 times the noise, at three channel spacings, with film and
+// without, and cosmic rays. No channel of the line is left out unless a ray hit it, and its position is right.
+func TestSiliconLineIsNeverASpike(t *testing.T) {
+	t.Parallel()
+	for _, spacing := range []float64{0.6, 1, 2} {
+		scene := &synth.Scene{Seed: 17}
+		scene.Stage = synth.Stage{Cols: 40, Rows: 25, DX: 0.5}
+		scene.Instrument = synth.Instrument{Spot: 0.6, ReadNoise: 4, Background: 300, From: 450, To: 2850, Channels: int(2400/spacing) + 1}
+		scene.Signal = synth.Signal{G: 300, Lines: []synth.Line{{Band: synth.Band{Name: "silicon", Position: 520.5, Width: 3, Height: 50 * math.Sqrt(316)}, PerLayer: 0.93}}}
+		scene.Spikes.Rate = 0.02 * 2400 / 40 // in 2 to 6 % of the pixels a ray near the line
+		scene.Objects = []synth.Object{{Layers: 1, Shape: synth.Shape{Disc: &synth.Disc{X: 8, Y: 6, Radius: 5}}}}
+		if err := scene.Prepare(); err != nil {
+			t.Fatal(err)
+		}
+		sc := scene.Scan()
+		plan, err := fit.NewPlan(fit.Graphene(), sc.Axis, sc.Laser, fit.Detector{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if plan, err = plan.Learn(t.Context(), sample, 0); err != nil {
+			t.Fatal(err)
+		}
+		if plan.Learned.Bare < 100 {
+			t.Errorf("spacing %g: %d bare pixels", spacing, plan.Learned.Bare)
+		}
+		fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		s, err := fits.Survey()
+		if err != nil {
+			t.Fatal(err)
+		}
+		position, width := s.Map("si_position"), s.Map("si_width")
+		g := scene.NewGenerator()
+		counts := make([]float32, len(sc.Axis))
+		var n, lost, touched, hit, sum, sum2, wide float64
+		for i := range scene.Len() {
+			_, _, tr := g.Pixel(i, counts)
+			c := tr.Row*s.Grid.Cols + tr.Col
+			near := false
+			for _, channel := range tr.Spikes {
+				near = near || math.Abs(sc.Axis[channel]-520.5) < 40
+			}
+			if near {
+				hit++
+				continue
+			}
+			if s.Map("spikes").Values[c] > 0 && len(tr.Spikes) == 0 {
+				touched++
+			}
+			v := float64(position.Values[c])
+			if v != v {
+				lost++
+				continue
+			}
+			n++
+			z := (v - 520.5) / float64(position.SE[c])
+			sum += z
+			sum2 += z * z
+			wide += float64(width.Values[c])
+		}
+		t.Logf("%.1f cm-1 per channel: %.0f pixels, line lost in %.0f, false spikes in %.0f, rays on it in %.0f; pulls of the position %+.3f, %.3f wide; mean width %.3f", spacing, n, lost, touched, hit, sum/n, math.Sqrt(sum2/n-sum*sum/n/n), wide/n)
+		if lost > 0 || touched > 0 || n < 900 {
+			t.Errorf("spacing %g: line lost in %.0f of %.0f pixels, channels left out without a ray in %.0f", spacing, lost, n+lost, touched)
+		}
+		// The model is the profile at the middle of a channel, as the simulation's: real channels integrate.
+		if !(math.Abs(sum/n) <= 4/math.Sqrt(n)) || !(math.Abs(wide/n-3) <= 0.03) {
+			t.Errorf("spacing %g: pulls of the position %+.3f; mean width %.3f", spacing, sum/n, wide/n)
+		}
+	}
+}
