@@ -244,7 +244,7 @@ func TestSurveyRefuses(t *testing.T) {
 		{"header.txt", strings.Join(lines[:head+1], ""), nil, exitFailed, []string{"header.txt: "}},
 		{"half-header.txt", strings.Join(lines[:head], "") + lines[head][:len(lines[head])/2], nil, exitFailed, []string{"half-header.txt: "}},
 		{"jump.txt", strings.Join(jump, ""), nil, exitFailed, []string{"jump.txt: "}},
-		{"letters.txt", strings.Join(letters, ""), nil, exitFailed, []string{"letters.txt: ", "line "}},
+		{"letters.txt", strings.Join(letters, ""), nil, exitFailed, []string{"letters.txt: line 4: value 3", "ab2"}},
 		{"no-positions.txt", strings.Join(bare, ""), nil, exitFailed, []string{"no-positions.txt: "}},
 		{"no-laser.txt", strings.Replace(wide, "laser 532 nm", "no word of it", 1), nil, exitFailed, []string{"no-laser.txt: ", "--laser"}},
 		{"wavelength.txt", strings.Replace(nm, "laser 532 nm", "no word of it", 1), nil, exitFailed, []string{"wavelength.txt: ", "--laser"}},

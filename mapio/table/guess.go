@@ -124,10 +124,35 @@ func (g *guess) dialects() error {
 	}
 	for i := range g.h.lines {
 		if best > 0 || g.looksLikeHeader(g.h.at(i)) {
+			if err := g.spoilt(i + 1); err != nil {
+				return err
+			}
 			return g.h.refuse(g.h.lines[len(g.h.lines)-1].no, "the run ends in its header: no row of data follows", "measure or copy it again", nil)
 		}
 	}
 	return g.h.refuse(0, "there are no rows of numbers in it", "check that it is a run in delimited text", nil)
+}
+
+// spoilt names the first value that is no number in a line from i on that would else be a row of data.
+func (g *guess) spoilt(i int) error {
+	for ; i < len(g.h.lines); i++ {
+		line := g.h.at(i)
+		for _, sep := range []byte("\t;, ") {
+			d := dialect{sep, '.'}
+			s := d.shape(line)
+			if _, ok := d.comment(line); ok || s.numbers < 3 || s.numbers < s.words+s.broken {
+				continue
+			}
+			for n, cell := range d.split(line, nil) {
+				if c := append(slices.Clone(cell), '\n'); len(cell) > 0 {
+					if _, _, ok := d.number(c, 0); !ok {
+						return g.h.refuse(g.h.lines[i].no, fmt.Sprintf("value %d of the row is %.20q, no number, and no row is without such a flaw", n+1, cell), "measure or export it again", nil)
+					}
+				}
+			}
+		}
+	}
+	return nil
 }
 
 // choose takes the dialect and number of fields of most clean rows, and returns how many these are.

@@ -14,9 +14,6 @@ type dialect struct {
 // blank tells whether c is white space inside a line.
 func blank(c byte) bool { return c == ' ' || c == '\t' || c == '\r' }
 
-// ends tells whether a field cannot go on at c.
-func (d dialect) ends(c byte) bool { return c == d.sep || c == '\n' || blank(c) }
-
 // The functions below take a line s that ends in '\n', which stops their loops.
 
 // start returns where the first field of s begins.
