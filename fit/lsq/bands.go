@@ -96,7 +96,8 @@ func (c *channels) project(g []float64, free []bool) {
 	}
 }
 
-// Bands is a sum of bands over a background. Its parameters are the background's coefficients, in the order of its functions,
+// Bands is a sum of bands over a background. All parameters are fitted together: eliminating heights and background from the
+// search (variable projection) saves 2 to 4 % of the evaluations and none of the time (BenchmarkElimination). Its parameters are the background's coefficients, in the order of its functions,
 // then those of each band's shape: height, position, width, and what else it has.
 type Bands struct {
 	channels
@@ -197,3 +198,30 @@ func (b *Bands) Project(g, r, p []float64, free []bool) {
 // Columns returns the weighted derivatives at the point where the problem was last evaluated, one slice for each of the free
 // parameters then. Read only.
 func (b *Bands) Columns() [][]float64 { return b.used }
+
+// Squares returns the problem at its present counts and weights as a general one, for [General]. It shares the memory of b: one
+// of the two is solved at a time.
+func (b *Bands) Squares() Squares {
+	all := make([]bool, b.Len())
+	for i := range all {
+		all[i] = true
+	}
+	n := b.Len()
+	return Squares{
+		Rows: len(b.X), Params: n,
+		Residuals: func(r, p []float64) {
+			b.Curve(r, p)
+			for i, v := range r {
+				r[i] = (v - b.Y[i]) * b.RootW[i]
+			}
+		},
+		Jacobian: func(j, p []float64) {
+			b.evaluate(p, all)
+			for k, column := range b.columns {
+				for i, v := range column {
+					j[i*n+k] = v
+				}
+			}
+		},
+	}
+}
