@@ -96,9 +96,11 @@ func (c *channels) project(g []float64, free []bool) {
 	}
 }
 
-// Bands is a sum of bands over a background. All parameters are fitted together: eliminating heights and background from the
-// search (variable projection) saves 2 to 4 % of the evaluations and none of the time (BenchmarkElimination). Its parameters are the background's coefficients, in the order of its functions,
+// Bands is a sum of bands over a background. Its parameters are the background's coefficients, in the order of its functions,
 // then those of each band's shape: height, position, width, and what else it has.
+//
+// All are fitted together: eliminating heights and background from the search (variable projection) saves 2 to 4 % of the
+// evaluations and none of the time (BenchmarkElimination).
 type Bands struct {
 	channels
 	shapes    []line.Shape
