@@ -135,8 +135,7 @@ func TestPullsOnASimulatedMap(t *testing.T) {
 			width := math.Sqrt(sum2/n - mean*mean)
 			bias := err / n / math.Sqrt(err2/n)
 			t.Logf("gain %g: %-11s %4.0f pixels, bias %+.3f of the scatter, pulls %+.3f wide %.3f", detector.Gain, q.name, n, bias, mean, width)
-			// Four standard errors of the mean, and a twentieth of the scatter for what is not linear in the counts.
-			if !(math.Abs(bias) <= 4/math.Sqrt(n)+0.05) || !(width >= 0.9 && width <= 1.1) || n < 500 {
+			if !(math.Abs(bias) <= 4/math.Sqrt(n)) || !(width >= 0.9 && width <= 1.1) || n < 500 {
 				t.Errorf("gain %g: %s over %.0f pixels: bias %+.3f of the scatter, pull width %.3f", detector.Gain, q.name, n, bias, width)
 			}
 		}
