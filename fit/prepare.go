@@ -11,7 +11,7 @@ type Preparation struct {
 	// Dark is what the detector gives without light: one value for all channels, or one per channel; counts.
 	Dark []float64
 	// Response is the spectrometer's relative sensitivity, one value per channel, above 0: counts are divided by it. The noise is
-	// still that of the counts as measured.
+	// still that of the counts as measured. Where it is NaN it is not known, and the channel is left out.
 	Response []float64
 }
 
@@ -29,8 +29,8 @@ func (p Preparation) Check(channels int) error {
 		return fmt.Errorf("the response has %d channels, the run %d", n, channels)
 	}
 	for i, v := range p.Response {
-		if !(v > 0) || math.IsInf(v, 0) {
-			return fmt.Errorf("response: channel %d is %g; numbers above 0 are needed", i, v)
+		if v <= 0 || math.IsInf(v, 0) {
+			return fmt.Errorf("response: channel %d is %g; numbers above 0, or NaN, are needed", i, v)
 		}
 	}
 	return nil
@@ -77,7 +77,7 @@ func (q *preparer) take(counts []float32) {
 	}
 	for i, c := range counts {
 		v := float64(c)
-		q.holes[i] = !(math.Abs(v) < math.MaxFloat32) || v >= q.full
+		q.holes[i] = !(math.Abs(v) < math.MaxFloat32) || v >= q.full || q.scale[i] != q.scale[i]
 		if q.holes[i] {
 			q.counts[i] = 0
 			continue

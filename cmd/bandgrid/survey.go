@@ -16,6 +16,7 @@ import (
 	"github.com/spf13/pflag"
 
 	"bandgrid/fit"
+	"bandgrid/fit/calib"
 	"bandgrid/fit/carbon"
 	"bandgrid/fit/region"
 	"bandgrid/mapio"
@@ -59,6 +60,7 @@ type surveyOptions struct {
 	readNoise   float64
 	instrument  float64
 	dark        float64
+	calibration string
 	flip        []string
 	exclude     string
 	saturation  float64
@@ -69,6 +71,7 @@ type surveyOptions struct {
 	quiet       bool
 
 	places fit.RunOptions // from workers, flip and exclude
+	calib  *calib.File    // from calibration
 }
 
 func (o *surveyOptions) add(fs *pflag.FlagSet) {
@@ -85,6 +88,7 @@ func (o *surveyOptions) add(fs *pflag.FlagSet) {
 	fs.Float64Var(&o.gain, "gain", 0, "detector gain in `electrons` per count (default: from the scatter of the run)")
 	fs.Float64Var(&o.readNoise, "read-noise", 0, "scatter of a channel without light, in `counts`; with --gain")
 	fs.Float64Var(&o.instrument, "instrument-width", 0, "FWHM of the spectrometer's line in `cm-1`, where known: widths are then the natural ones")
+	fs.StringVar(&o.calibration, "calibration", "", "`file` from bandgrid calibrate: corrects the shift axis and the response")
 	fs.Float64Var(&o.dark, "dark", 0, "`counts` that the detector gives without light, taken off every channel")
 	fs.StringSliceVar(&o.flip, "flip", nil, "stage axis that runs the other way: `x`, y, or x,y")
 	fs.StringVar(&o.exclude, "exclude", "", "`file` with polygons to leave out (metal, tape): lines name,x,y, a vertex each, um")
@@ -164,6 +168,9 @@ func (o *surveyOptions) place() error {
 			return usageError{fmt.Errorf("--flip %s: x, y or x,y is possible", axis)}
 		}
 	}
+	if err := o.readCalibration(); err != nil {
+		return err
+	}
 	if o.exclude == "" {
 		return nil
 	}
@@ -180,6 +187,43 @@ func (o *surveyOptions) place() error {
 		return slices.ContainsFunc(areas, func(a area.Area) bool { return a.Contains(x, y) })
 	}
 	return nil
+}
+
+func (o *surveyOptions) readCalibration() error {
+	if o.calibration == "" {
+		return nil
+	}
+	f, err := os.Open(o.calibration)
+	if err != nil {
+		return err
+	}
+	defer f.Close()
+	if o.calib, err = calib.Read(f); err != nil {
+		return fmt.Errorf("%s: %w", o.calibration, err)
+	}
+	return nil
+}
+
+// calibrated returns the axis of a run as corrected.
+func (o *surveyOptions) calibrated(sc *scan.Scan) (scan.Axis, error) {
+	if o.calib == nil || o.calib.Axis == nil {
+		return sc.Axis, nil
+	}
+	axis, err := o.calib.Axis.Apply(sc.Axis)
+	if err != nil {
+		return nil, &scan.InputError{File: sc.File, Pixel: -1, What: "its axis cannot be corrected", Err: err, Remedy: "calibrate with the same grating position"}
+	}
+	return axis, nil
+}
+
+// prepare sets what is done to the counts of a run with that axis, as corrected.
+func (o *surveyOptions) prepare(plan *fit.Plan) {
+	if o.dark != 0 {
+		plan.Preparation.Dark = []float64{o.dark}
+	}
+	if o.calib != nil && o.calib.Response != nil {
+		plan.Preparation.Response = o.calib.Response.On(plan.Axis)
+	}
 }
 
 // readRecipe returns the recipe to use, flags that change it included.
@@ -290,7 +334,11 @@ func (o *surveyOptions) openAll(run string, recipe fit.Recipe, std streams) (in 
 			Remedy: "give it with --laser, for instance --laser 532"}
 	}
 	detector := fit.Detector{Gain: o.gain, ReadNoise: o.readNoise, Saturation: o.saturation}
-	in.plan, err = fit.NewPlan(recipe, in.first.Axis, in.first.Laser, detector)
+	axis, err := o.calibrated(in.first)
+	if err != nil {
+		return in, err
+	}
+	in.plan, err = fit.NewPlan(recipe, axis, in.first.Laser, detector)
 	if err != nil {
 		return in, &scan.InputError{File: in.first.File, Pixel: -1, What: "its spectra cannot be fitted", Err: err,
 			Remedy: "check the axis and its unit (--columns), the laser line (--laser) and the recipe's windows"}
@@ -309,7 +357,10 @@ func (o *surveyOptions) openAll(run string, recipe fit.Recipe, std streams) (in 
 			What:   fmt.Sprintf("its laser line is %g nm, that of %s %g nm", l, in.first.File, in.first.Laser),
 			Remedy: "give the right one for both with --laser"}
 	}
-	if in.rest, err = in.plan.Rest(in.second.Axis, detector); err != nil {
+	if axis, err = o.calibrated(in.second); err != nil {
+		return in, err
+	}
+	if in.rest, err = in.plan.Rest(axis, detector); err != nil {
 		return in, &scan.InputError{File: in.second.File, Pixel: -1, What: "its spectra cannot be fitted", Err: err,
 			Remedy: "it should hold the windows that the first run lacks: " + strings.Join(in.plan.Lacks, ", ")}
 	}
@@ -329,9 +380,7 @@ func (o *surveyOptions) learn(ctx context.Context, run string, in *inputs) error
 		}
 		sample, err := o.sample(ctx, r.path, r.sc, in.options)
 		if err == nil {
-			if o.dark != 0 {
-				(*r.plan).Preparation.Dark = []float64{o.dark}
-			}
+			o.prepare(*r.plan)
 			*r.plan, err = (*r.plan).Learn(ctx, sample, o.workers)
 		}
 		if err != nil {
@@ -445,7 +494,7 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 			s.Runs = append(s.Runs, survey.RunFile{Name: filepath.Base(sc.File), SHA256: sc.Digest(), Bytes: read, Format: sc.Format})
 		}
 	}
-	low, high := in.first.Axis.Range()
+	low, high := in.plan.Axis.Range()
 	s.Laser = in.first.Laser
 	s.Axis = survey.AxisInfo{Channels: len(in.first.Axis), From: low, To: high}
 	s.Recipe, _ = json.Marshal(in.plan.Recipe) // a recipe that was read or built in can be written
@@ -465,6 +514,10 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 			s.Settings[name] = v
 		}
 	}
+	if o.calib != nil {
+		s.Settings["calibration"] = filepath.Base(o.calibration)
+		s.Calibration = describeCalibration(o.calib)
+	}
 	if len(o.flip) > 0 {
 		s.Settings["flip"] = strings.Join(o.flip, ",")
 	}
@@ -483,4 +536,29 @@ func (o *surveyOptions) interpret(s *survey.Survey, recipe fit.Recipe) error {
 		return err
 	}
 	return region.Find(s, region.Options{MinArea: o.minArea, Ring: o.spot})
+}
+
+// describeCalibration says in words what was corrected, and how well, for the report.
+func describeCalibration(f *calib.File) (list []string) {
+	if c := f.Axis; c != nil {
+		list = append(list, "Shift axis corrected: "+c.Summary()+".")
+		for _, at := range []struct {
+			band  string
+			shift float64
+		}{{"G", 1582}, {"2D", 2670}} {
+			text := fmt.Sprintf("All %s positions share an error of %.2f cm-1 from that.", at.band, c.SE(at.shift))
+			if !c.Bracketed(at.shift) {
+				text = fmt.Sprintf("No line of the reference lies beyond %s: its positions are corrected by extrapolation, and how well is not known.", at.band)
+			}
+			list = append(list, text)
+		}
+	}
+	if r := f.Response; r != nil {
+		text := "Counts corrected for the relative response of the spectrometer: " + r.From + "."
+		if se, err := r.RatioSE(1582, 2670); err == nil {
+			text += fmt.Sprintf(" All 2D/G ratios share an error of %.1f %% from that.", 100*se)
+		}
+		list = append(list, text)
+	}
+	return list
 }

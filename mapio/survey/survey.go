@@ -42,19 +42,21 @@ type RunFile struct {
 
 // Info is survey.json but for the maps' arrays.
 type Info struct {
-	Program    string              `json:"program"` // "bandgrid" and its version
-	Runs       []RunFile           `json:"runs"`    // one, or two where a second run holds the other window
-	Laser      float64             `json:"laser_nm"`
-	Axis       AxisInfo            `json:"axis"`
-	Grid       scan.Grid           `json:"grid"`
-	Pixels     Pixels              `json:"pixels"`
-	Recipe     json.RawMessage     `json:"recipe"`            // as used, in full
-	Learned    []Learned           `json:"learned,omitempty"` // for each of the runs
-	Settings   map[string]any      `json:"settings"`          // interpretation and display settings: spot, film, minimum area ...
-	Notes      map[string]string   `json:"notes,omitempty"`
-	Warnings   []string            `json:"warnings"`
-	Complete   bool                `json:"complete"` // false where part of the input was unusable or the run was interrupted
-	Quantities map[string]Quantity `json:"quantities"`
+	Program string          `json:"program"` // "bandgrid" and its version
+	Runs    []RunFile       `json:"runs"`    // one, or two where a second run holds the other window
+	Laser   float64         `json:"laser_nm"`
+	Axis    AxisInfo        `json:"axis"`
+	Grid    scan.Grid       `json:"grid"`
+	Pixels  Pixels          `json:"pixels"`
+	Recipe  json.RawMessage `json:"recipe"`            // as used, in full
+	Learned []Learned       `json:"learned,omitempty"` // for each of the runs
+	// Calibration says in words what was corrected on axis and response; empty where nothing was.
+	Calibration []string            `json:"calibration,omitempty"`
+	Settings    map[string]any      `json:"settings"` // interpretation and display settings: spot, film, minimum area ...
+	Notes       map[string]string   `json:"notes,omitempty"`
+	Warnings    []string            `json:"warnings"`
+	Complete    bool                `json:"complete"` // false where part of the input was unusable or the run was interrupted
+	Quantities  map[string]Quantity `json:"quantities"`
 }
 
 // AxisInfo describes the shift axis.

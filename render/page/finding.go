@@ -198,6 +198,7 @@ func quality(s *survey.Survey) (list []string) {
 		}
 		list = append(list, fmt.Sprintf("Cosmic rays: %s left out, in %s.", plural(channels, "channel"), plural(pixels, "pixel")))
 	}
+	list = append(list, s.Calibration...)
 	for _, l := range s.Learned {
 		list = append(list, learned(l)...)
 	}

@@ -159,7 +159,7 @@ func cautions(s *survey.Survey) []string {
 		"The laser of a Raman microscope can injure the eye: interlocks stay on, and wafers reflect like mirrors. Local rules and qualified practice come first.",
 		"Layer number rests on published distributions for flakes on oxidised silicon and on simulation; the method has not yet been checked on a measured map of known layers.",
 	}
-	if s.Map("2d_g_ratio") != nil {
+	if s.Map("2d_g_ratio") != nil && !slices.ContainsFunc(s.Calibration, func(c string) bool { return strings.Contains(c, "response") }) {
 		list = append(list, "The 2D/G ratio is as measured: the spectrometer's response between the two bands, which commonly differs by 5 to 30 % between instruments (common practice), is not corrected.")
 	}
 	return list
