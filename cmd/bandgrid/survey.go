@@ -61,6 +61,7 @@ type surveyOptions struct {
 	instrument  float64
 	dark        float64
 	calibration string
+	trackLine   string
 	flip        []string
 	exclude     string
 	saturation  float64
@@ -89,6 +90,7 @@ func (o *surveyOptions) add(fs *pflag.FlagSet) {
 	fs.Float64Var(&o.readNoise, "read-noise", 0, "scatter of a channel without light, in `counts`; with --gain")
 	fs.Float64Var(&o.instrument, "instrument-width", 0, "FWHM of the spectrometer's line in `cm-1`, where known: widths are then the natural ones")
 	fs.StringVar(&o.calibration, "calibration", "", "`file` from bandgrid calibrate: corrects the shift axis and the response")
+	fs.StringVar(&o.trackLine, "track-line", "", "`band` that every spectrum shows (si), whose drift over the run is taken out of all positions")
 	fs.Float64Var(&o.dark, "dark", 0, "`counts` that the detector gives without light, taken off every channel")
 	fs.StringSliceVar(&o.flip, "flip", nil, "stage axis that runs the other way: `x`, y, or x,y")
 	fs.StringVar(&o.exclude, "exclude", "", "`file` with polygons to leave out (metal, tape): lines name,x,y, a vertex each, um")
@@ -457,6 +459,14 @@ func (o *surveyOptions) fitRun(ctx context.Context, sc *scan.Scan, plan *fit.Pla
 		}
 		broken = errors.Join(broken, fmt.Errorf("%d of %d pixels could not be read, the first: %w", unreadable.Pixels, fits.Len(), unreadable.First[0]))
 	}
+	var drift *survey.Drift
+	var unfollowed string
+	if o.trackLine != "" {
+		var err error
+		if drift, err = fits.Track(o.trackLine); err != nil {
+			unfollowed = "drift was not taken out: " + err.Error()
+		}
+	}
 	s, err := fits.Survey()
 	switch {
 	case err != nil && ended != nil:
@@ -469,6 +479,10 @@ func (o *surveyOptions) fitRun(ctx context.Context, sc *scan.Scan, plan *fit.Pla
 	}
 	if len(s.Warnings) > 0 { // it ends in mid-line
 		broken = errors.Join(broken, &scan.InputError{File: sc.File, Pixel: -1, What: s.Warnings[0]})
+	}
+	s.Drift = drift
+	if unfollowed != "" {
+		s.Warnings = append(s.Warnings, unfollowed)
 	}
 	if broken != nil {
 		s.Warnings = append(s.Warnings, strings.Split(broken.Error(), "\n")...)

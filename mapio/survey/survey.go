@@ -50,6 +50,7 @@ type Info struct {
 	Pixels  Pixels          `json:"pixels"`
 	Recipe  json.RawMessage `json:"recipe"`            // as used, in full
 	Learned []Learned       `json:"learned,omitempty"` // for each of the runs
+	Drift   *Drift          `json:"drift,omitempty"`   // of the axis, where a line was followed
 	// Calibration says in words what was corrected on axis and response; empty where nothing was.
 	Calibration []string            `json:"calibration,omitempty"`
 	Settings    map[string]any      `json:"settings"` // interpretation and display settings: spot, film, minimum area ...

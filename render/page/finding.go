@@ -199,6 +199,12 @@ func quality(s *survey.Survey) (list []string) {
 		list = append(list, fmt.Sprintf("Cosmic rays: %s left out, in %s.", plural(channels, "channel"), plural(pixels, "pixel")))
 	}
 	list = append(list, s.Calibration...)
+	if d := s.Drift; d != nil {
+		list = append(list, fmt.Sprintf("Drift of the axis, followed with the %s line: %.2f cm⁻¹ over the run, known to %.2f, taken out of all positions.", d.Band, d.Range, d.Error))
+		for _, j := range d.Jumps {
+			list = append(list, fmt.Sprintf("The axis jumped by %+.2f ± %.2f cm⁻¹ before pixel %d: a grating that moved, or the laser's mode.", j.Size, j.SE, j.Pixel))
+		}
+	}
 	for _, l := range s.Learned {
 		list = append(list, learned(l)...)
 	}
