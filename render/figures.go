@@ -41,6 +41,9 @@ func Standard(s *survey.Survey, opt Options) ([]Picture, error) {
 				return Histogram(s, name, small)
 			}})
 	}
+	if s.Drift != nil {
+		jobs = append(jobs, job{"drift", "Drift of the shift axis", altDrift(s.Drift), func() (*plot.Figure, error) { return Drift(s, opt) }})
+	}
 	if len(jobs) > 0 {
 		sheet := opt
 		sheet.WidthMM = 0
