@@ -17,7 +17,7 @@ type Fitter struct {
 
 // NewFitter returns a fitter for the plan.
 func NewFitter(plan *Plan) *Fitter {
-	f := &Fitter{plan: plan, preparer: newPreparer(plan.Preparation, plan.Detector, len(plan.Axis))}
+	f := &Fitter{plan: plan, preparer: newPreparer(plan.Preparation, plan.Detector, plan.Axis, plan.Recipe.Baseline)}
 	for i := range plan.windows {
 		w := newWindow(&plan.windows[i], &plan.Recipe, plan.noise)
 		f.windows = append(f.windows, w)

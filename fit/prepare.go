@@ -4,6 +4,9 @@ import (
 	"errors"
 	"fmt"
 	"math"
+
+	"bandgrid/fit/clean"
+	"bandgrid/mapio/scan"
 )
 
 // A Preparation says what is done to the counts of every pixel before they are fitted. The zero value does nothing.
@@ -47,9 +50,12 @@ type preparer struct {
 	counts  []float64 // prepared; 0 where there are none
 	holes   []bool    // channels without a usable count
 	removed []float64 // light that was taken off but makes noise, in counts as measured; nil without
+	base    *clean.Background
+	line    []float64 // the background of the whole spectrum, prepared
 }
 
-func newPreparer(p Preparation, d Detector, channels int) *preparer {
+func newPreparer(p Preparation, d Detector, axis scan.Axis, baseline clean.Baseline) *preparer {
+	channels := len(axis)
 	q := &preparer{full: math.Inf(1), dark: make([]float64, channels), scale: make([]float64, channels),
 		counts: make([]float64, channels), holes: make([]bool, channels)}
 	if d.Saturation > 0 {
@@ -67,6 +73,11 @@ func newPreparer(p Preparation, d Detector, channels int) *preparer {
 			q.scale[i] = 1 / p.Response[i]
 		}
 	}
+	if !baseline.None() {
+		low, high := axis.Range()
+		q.base = clean.NewBackground(baseline, channels, (high-low)/float64(channels-1))
+		q.line, q.removed = make([]float64, channels), make([]float64, channels)
+	}
 	return q
 }
 
@@ -83,5 +94,16 @@ func (q *preparer) take(counts []float32) {
 			continue
 		}
 		q.counts[i] = (v - q.dark[i]) * q.scale[i]
+	}
+	if q.base == nil {
+		return
+	}
+	q.base.Estimate(q.line, q.counts, q.holes)
+	for i, z := range q.line {
+		q.removed[i] = 0
+		if !q.holes[i] {
+			q.counts[i] -= z
+			q.removed[i] = z / q.scale[i]
+		}
 	}
 }

@@ -11,6 +11,7 @@ import (
 	"slices"
 	"strings"
 
+	"bandgrid/fit/clean"
 	"bandgrid/fit/line"
 )
 
@@ -29,6 +30,9 @@ type Recipe struct {
 	// InstrumentWidth is the FWHM of the spectrometer's line, taken as Gaussian. Where it is known, Lorentzian bands are fitted
 	// as seen through it, so that their widths are the natural ones. 0: not known, widths are as measured.
 	InstrumentWidth float64 `json:"instrument_width_cm-1"`
+	// Baseline is taken off the whole spectrum before the windows are fitted, for strong luminescence; none by default, as its
+	// uncertainty is not in the errors of the fit.
+	Baseline clean.Baseline `json:"baseline"`
 	// Substrate asks for what the bare pixels of the map show beside the background, such as lines of silicon or of the air, as a
 	// further term of the background.
 	Substrate bool `json:"substrate"`
@@ -119,6 +123,7 @@ func Graphene() Recipe {
 		},
 		SpikeThreshold: 6,
 		Discrepancy:    0.002,
+		Baseline:       clean.Baseline{Method: "none"},
 		Substrate:      true,
 		PoorFit:        2,
 	}
@@ -197,6 +202,9 @@ func (r Recipe) Check() error {
 	}
 	if !(r.SpikeThreshold >= 3) {
 		return fmt.Errorf("spike_threshold is %g; below 3 noise would be masked", r.SpikeThreshold)
+	}
+	if err := r.Baseline.Check(); err != nil {
+		return fmt.Errorf("baseline: %w", err)
 	}
 	if !(r.Discrepancy >= 0 && r.Discrepancy < 0.5) {
 		return fmt.Errorf("discrepancy is %g; a fraction of the height from 0 to 0.5 is needed", r.Discrepancy)

@@ -6,6 +6,7 @@ import (
 
 	"gonum.org/v1/gonum/floats"
 
+	"bandgrid/fit/clean"
 	"bandgrid/mapio/scan"
 )
 
@@ -72,7 +73,7 @@ func (p *Plan) learnSubstrate(sample []scan.Pixel, looks []look) {
 // meanOf returns the mean of pixels of the sample, channel by channel, without holes.
 func (p *Plan) meanOf(sample []scan.Pixel, list []int) []float32 {
 	sum, n := make([]float64, len(p.Axis)), make([]float64, len(p.Axis))
-	q := newPreparer(Preparation{}, p.Detector, len(p.Axis))
+	q := newPreparer(Preparation{}, p.Detector, p.Axis, clean.Baseline{})
 	for _, i := range list {
 		q.take(sample[i].Counts)
 		for c, hole := range q.holes {
