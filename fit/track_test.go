@@ -47,19 +47,16 @@ func TestTrackLine(t *testing.T) {
 	g := scene.NewGenerator()
 	counts := make([]float32, len(sc.Axis))
 	q := s.Map("g_position")
-	var first, last, off []float64
-	mean := 0.0
+	var first, last []float64
 	for i := range scene.Len() {
 		_, _, tr := g.Pixel(i, counts)
 		c := tr.Row*s.Grid.Cols + tr.Col
 		e := float64(q.Values[c]) - tr.G.Position
-		mean += e / float64(scene.Len())
 		if i < 200 {
 			first = append(first, e)
 		} else if i >= scene.Len()-200 {
 			last = append(last, e)
 		}
-		off = append(off, e)
 	}
 	// A single G is good to 0.2 cm-1, so the median of 200 to 0.02: over the run nothing is left of 0.8.
 	a, b := clean.Median(first), clean.Median(last)

@@ -84,7 +84,7 @@ func TestBackgrounds(t *testing.T) {
 			y[i] = 0
 		}
 	}
-	for _, set := range []Baseline{{Method: "als"}, {Method: "arpls"}, {Method: "snip"}} {
+	for _, set := range []Baseline{{Method: "als", Stiffness: 500, Asymmetry: 0.01}, {Method: "arpls"}, {Method: "snip"}} {
 		b := NewBackground(set, n, 1.5)
 		b.Estimate(z, y, skip)
 		worst, sum := 0.0, 0.0
