@@ -7,6 +7,8 @@ import (
 	"io"
 	"math"
 	"os"
+	"path/filepath"
+	"slices"
 	"strings"
 
 	"github.com/spf13/pflag"
@@ -47,6 +49,8 @@ type calibrateOptions struct {
 	laser      float64
 	glass      string
 	glassName  string
+	response   string
+	doubt      float64
 	dark       float64
 	force      bool
 }
@@ -58,13 +62,15 @@ func (o *calibrateOptions) add(fs *pflag.FlagSet) {
 	fs.Float64Var(&o.laser, "laser", 0, "laser line in `nm`, where the spectra do not say")
 	fs.StringVar(&o.glass, "glass", "", "`spectrum` of a certified glass")
 	fs.StringVar(&o.glassName, "glass-name", "", "which glass it is (default: the one for the laser line)")
+	fs.StringVar(&o.response, "response", "", "`table` of a response of your own: text of two columns, shift and relative sensitivity")
+	fs.Float64Var(&o.doubt, "response-error", 0.03, "relative standard `error` of that table")
 	fs.Float64Var(&o.dark, "dark", 0, "`counts` that the detector gives without light, for the glass")
 	fs.BoolVarP(&o.force, "force", "f", false, "replace a file that is already there")
 }
 
 func (o *calibrateOptions) check(spectra []string) error {
 	switch {
-	case len(spectra) == 0 && o.glass == "":
+	case len(spectra) == 0 && o.glass == "" && o.response == "":
 		return errors.New("no spectrum given; bandgrid calibrate --help shows an example")
 	case len(spectra) != len(o.references):
 		return fmt.Errorf("%d spectra and %d references: name one with --reference for each spectrum", len(spectra), len(o.references))
@@ -74,6 +80,10 @@ func (o *calibrateOptions) check(spectra []string) error {
 		return fmt.Errorf("--order %d: 0 to 3 are possible", o.order)
 	case o.laser != 0 && !(o.laser >= 200 && o.laser <= 2000):
 		return fmt.Errorf("--laser %g: a wavelength in nm between 200 and 2000 is needed", o.laser)
+	case o.glass != "" && o.response != "":
+		return errors.New("--glass and --response both give the response; one is enough")
+	case !(o.doubt >= 0 && o.doubt < 1):
+		return fmt.Errorf("--response-error %g: a fraction from 0 to 1 is needed", o.doubt)
 	case o.glass == "" && o.glassName != "":
 		return errors.New("--glass-name goes with --glass")
 	}
@@ -120,8 +130,12 @@ func (o *calibrateOptions) run(ctx context.Context, spectra []string, std stream
 		}
 		describeAxis(words, file.Axis)
 	}
-	if o.glass != "" {
-		r, err := o.response(ctx, options, file.Axis)
+	if o.glass != "" || o.response != "" {
+		measure := o.fromGlass
+		if o.response != "" {
+			measure = o.fromTable
+		}
+		r, err := measure(ctx, options, file.Axis)
 		if err != nil {
 			return err
 		}
@@ -138,8 +152,28 @@ func (o *calibrateOptions) run(ctx context.Context, spectra []string, std stream
 	return err
 }
 
-// response makes the response from the glass, on the axis as corrected.
-func (o *calibrateOptions) response(ctx context.Context, options mapio.Options, axis *calib.Calibration) (*calib.Response, error) {
+// fromTable reads a response of the user's own, whose shifts are taken as right.
+func (o *calibrateOptions) fromTable(ctx context.Context, options mapio.Options, _ *calib.Calibration) (*calib.Response, error) {
+	s, err := mapio.OpenSpectrum(ctx, o.response, options)
+	if err != nil {
+		return nil, err
+	}
+	r := &calib.Response{From: filepath.Base(o.response)}
+	for i, c := range s.Counts {
+		r.Shifts, r.Values, r.SEs = append(r.Shifts, s.Axis[i]), append(r.Values, float64(c)), append(r.SEs, o.doubt)
+	}
+	if s.Axis.Descending() {
+		slices.Reverse(r.Shifts)
+		slices.Reverse(r.Values)
+	}
+	if err := r.Check(); err != nil {
+		return nil, fmt.Errorf("%s: %w", o.response, err)
+	}
+	return r, nil
+}
+
+// fromGlass makes the response from the glass, on the axis as corrected.
+func (o *calibrateOptions) fromGlass(ctx context.Context, options mapio.Options, axis *calib.Calibration) (*calib.Response, error) {
 	s, err := mapio.OpenSpectrum(ctx, o.glass, options)
 	if err != nil {
 		return nil, err
@@ -156,7 +190,7 @@ func (o *calibrateOptions) response(ctx context.Context, options mapio.Options, 
 			}
 		}
 		if name == "" {
-			return nil, fmt.Errorf("no certified glass is known for %g nm; give a response of your own with survey --response", laser)
+			return nil, fmt.Errorf("no certified glass is known for %g nm; give a response of your own with --response", laser)
 		}
 	}
 	g, err := calib.GlassNamed(name)
