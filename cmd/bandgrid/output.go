@@ -21,6 +21,7 @@ type bundle struct {
 	recipe  fit.Recipe
 	table   bool // pixels.csv too
 	workers int
+	traces  []survey.Trace // spectra to show
 }
 
 // write writes a survey's files into a folder: numbers, figures, report.
@@ -41,6 +42,13 @@ func (b bundle) write(dir string, s *survey.Survey) error {
 	pictures, err := render.Standard(s, render.Options{Workers: workers})
 	if err != nil {
 		return err
+	}
+	if len(b.traces) > 0 {
+		picture, err := spectra(b.traces)
+		if err != nil {
+			return err
+		}
+		pictures = append(pictures, picture)
 	}
 	if err := os.MkdirAll(filepath.Join(dir, "figures"), 0o777); err != nil {
 		return err
@@ -73,6 +81,24 @@ func writeBytes(name string, data []byte) error {
 		_, err := w.Write(data)
 		return err
 	})
+}
+
+// spectra draws the spectra of single pixels.
+func spectra(traces []survey.Trace) (p render.Picture, err error) {
+	f, err := render.Spectra(traces, render.Options{WidthMM: 160})
+	if err != nil {
+		return p, err
+	}
+	var png bytes.Buffer
+	if err := f.PNG(&png); err != nil {
+		return p, err
+	}
+	var kinds []string
+	for _, t := range traces {
+		kinds = append(kinds, strings.ToLower(t.Title))
+	}
+	return render.Picture{Name: "spectra", Title: "Spectra of usual pixels with their fits", PNG: png.Bytes(),
+		Alt: "Spectra with fit and background of usual pixels: " + strings.Join(kinds, ", ") + "."}, nil
 }
 
 // groups puts each map beside its histogram, and the overview first.

@@ -291,7 +291,8 @@ func (o *surveyOptions) one(ctx context.Context, run string, recipe fit.Recipe, 
 	if err := o.interpret(s, recipe); err != nil {
 		return errors.Join(err, folder.Abandon())
 	}
-	if err := (bundle{recipe, o.table, o.workers}).write(folder.Path(), s); err != nil {
+	traces := fit.Examples(s, inputs.plan, inputs.sample, o.places)
+	if err := (bundle{recipe, o.table, o.workers, traces}).write(folder.Path(), s); err != nil {
 		return errors.Join(err, folder.Abandon())
 	}
 	if stopped != nil {
@@ -314,6 +315,7 @@ type inputs struct {
 	first, second *scan.Scan
 	plan, rest    *fit.Plan
 	options       mapio.Options // to open them again
+	sample        []scan.Pixel  // of the first
 }
 
 func (in inputs) close() {
@@ -381,6 +383,9 @@ func (o *surveyOptions) learn(ctx context.Context, run string, in *inputs) error
 			continue
 		}
 		sample, err := o.sample(ctx, r.path, r.sc, in.options)
+		if in.sample == nil {
+			in.sample = sample
+		}
 		if err == nil {
 			o.prepare(*r.plan)
 			*r.plan, err = (*r.plan).Learn(ctx, sample, o.workers)

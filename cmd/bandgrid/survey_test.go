@@ -502,7 +502,7 @@ func TestSurveyFiles(t *testing.T) {
 	path := save(t, filepath.Join(t.TempDir(), "night.txt"), flakeNight(t, "raster").text(t, table.Style{}))
 	folder := surveyed(t, path, "--note", "sample=A7", "--table", "--oxide", "300")
 	for _, name := range []string{"report.html", "report.md", "regions.csv", "pixels.csv", "survey.json", "figures/overview.png",
-		"figures/layer_number.png", "figures/d_g_ratio.png", "figures/g_position.png", "figures/2d_width.png", "maps/x.npy", "maps/y.npy"} {
+		"figures/layer_number.png", "figures/d_g_ratio.png", "figures/g_position.png", "figures/2d_width.png", "figures/spectra.png", "maps/x.npy", "maps/y.npy"} {
 		if info, err := os.Stat(filepath.Join(folder, name)); err != nil || info.Size() == 0 {
 			t.Errorf("%s: %v", name, err)
 		}
