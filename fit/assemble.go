@@ -57,8 +57,11 @@ func (f *Fits) Survey() (*survey.Survey, error) {
 			good++
 		}
 	}
+	var holes [2]int
 	for _, s := range f.slabs {
 		left += s.left
+		holes[0] += s.holes[0]
+		holes[1] += s.holes[1]
 	}
 	if good == 0 {
 		return nil, ErrNoPixel
@@ -101,6 +104,7 @@ func (f *Fits) Survey() (*survey.Survey, error) {
 	s.Pixels.Repeated, s.Pixels.Excluded = len(x)-onCell-unread-left, left
 	f.maps(s, chosen)
 	s.Pixels.Failed = unread
+	s.Pixels.Holes, s.Pixels.Holed = holes[0], holes[1]
 	status := s.Map("status")
 	for _, i := range status.Values {
 		switch {

@@ -11,6 +11,7 @@ type Fitter struct {
 	plan     *Plan
 	preparer *preparer
 	windows  []*window
+	holes    int       // channels of the last spectrum that were left out for want of a usable count
 	grad     []float64 // of a quantity by a window's parameters
 	other    []float64
 }
@@ -38,8 +39,15 @@ func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 	var sum, weight float64
 	spikes := 0
 	f.preparer.take(counts)
+	f.holes = 0
 	for _, w := range f.windows {
-		if !w.fit(f.preparer) {
+		fitted := w.fit(f.preparer)
+		for _, hole := range w.holes {
+			if hole {
+				f.holes++
+			}
+		}
+		if !fitted {
 			status = status&^Converged | w.status
 			for _, bit := range w.bits {
 				status |= Absent(bit)

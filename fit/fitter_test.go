@@ -237,3 +237,42 @@ func BenchmarkFit(b *testing.B) {
 		})
 	}
 }
+
+// BenchmarkPreparation measures what each preparation adds to the fit of a pixel.
+func BenchmarkPreparation(b *testing.B) {
+	axis := evenAxis(1000, 3000, 2)
+	response := make([]float64, len(axis))
+	for i := range response {
+		response[i] = 1 - 0.0003*float64(i)
+	}
+	for _, c := range []struct {
+		name    string
+		prepare Preparation
+		method  string
+	}{{"none", Preparation{}, ""}, {"dark", Preparation{Dark: []float64{100}}, ""}, {"response", Preparation{Response: response}, ""},
+		{"als", Preparation{}, "als"}, {"arpls", Preparation{}, "arpls"}, {"snip", Preparation{}, "snip"}} {
+		b.Run("step="+c.name, func(b *testing.B) {
+			recipe := Graphene()
+			recipe.Baseline.Method = c.method
+			plan, err := NewPlan(recipe, axis, 532, Detector{Gain: 1, ReadNoise: 4})
+			if err != nil {
+				b.Fatal(err)
+			}
+			plan.Preparation = c.prepare
+			f := NewFitter(plan)
+			v, se := make([]float32, len(plan.Columns)), make([]float32, len(plan.Columns))
+			r := rand.New(rand.NewPCG(7, 9))
+			pixels := make([][]float32, 32)
+			for i := range pixels {
+				pixels[i] = make([]float32, len(axis))
+				spectrum(pixels[i], axis, r, 1, 4, 400, 0, lorentz{250, 1345, 26}, lorentz{400, 1584, 14}, lorentz{900, 2676, 29})
+			}
+			b.ReportAllocs()
+			i := 0
+			for b.Loop() {
+				f.Fit(pixels[i%len(pixels)], v, se)
+				i++
+			}
+		})
+	}
+}

@@ -60,6 +60,7 @@ func (p *Plan) Learn(ctx context.Context, sample []scan.Pixel, workers int) (*Pl
 	for i := range q.windows {
 		q.windows[i].Bands = slices.Clone(q.windows[i].Bands)
 		q.windows[i].discrepancy = slices.Clone(q.windows[i].discrepancy)
+		q.windows[i].usual = slices.Clone(q.windows[i].usual)
 		q.learnBands(&q.windows[i], looks)
 	}
 	return &q, nil
@@ -369,6 +370,9 @@ func (p *Plan) learnBands(w *windowPlan, looks []look) {
 			w.discrepancy[k] = max(w.discrepancy[k], l.Discrepancy)
 		}
 		p.Learned.Bands = append(p.Learned.Bands, l)
+		if b.Narrow && 2*l.Pixels > len(looks) { // nearly every pixel shows it
+			w.usual[k] = place{l.Position, l.Width}
+		}
 		if b.Search {
 			continue // found wherever it is; where it is not found there is no film, and nothing to be learnt of its place
 		}

@@ -111,8 +111,9 @@ type windowPlan struct {
 	basis    [][]float64 // functions of the background: powers, and what the bare substrate shows beside them
 	// discrepancy of each band's shape, a fraction of its height: the recipe's, or what the run shows
 	discrepancy []float64
-	weak        []weak // what stands in for each band where it is too weak to be located
-	makeup      int    // first column of the make-up, -1 without
+	usual       []place // where narrow bands lie in this run, and how wide they are; width 0 where that is not known
+	weak        []weak  // what stands in for each band where it is too weak to be located
+	makeup      int     // first column of the make-up, -1 without
 }
 
 type ratioPlan struct {
@@ -171,6 +172,7 @@ func newPlan(recipe Recipe, axis scan.Axis, laser float64, detector Detector, do
 			wp.Bands = append(wp.Bands, b)
 			wp.shapes = append(wp.shapes, shapes[b.Shape](recipe.InstrumentWidth))
 			wp.discrepancy = append(wp.discrepancy, recipe.Discrepancy)
+			wp.usual = append(wp.usual, place{})
 		}
 		if params := w.Background + 1 + wp.parameters(); len(wp.Bands) == 0 || len(wp.channels) < 3*params {
 			if !w.Optional {

@@ -53,6 +53,7 @@ type slab struct {
 	x, y     []float64
 	read     []bool      // the pixel could be read, and is not left out
 	left     int         // pixels that are left out
+	holes    [2]int      // channels without a usable count, and pixels that have such
 	last     bool        // the run ends inside the last pixel's last line
 	columns  [][]float32 // values, then standard errors, of each of the plan's columns
 	problems []*scan.InputError
@@ -131,6 +132,10 @@ func (w *worker) block(block scan.Block) *slab {
 		}
 		s.last = pixel.Open
 		w.fitter.Fit(pixel.Counts, row[:q], row[q:])
+		if h := w.fitter.holes; h > 0 {
+			s.holes[0] += h
+			s.holes[1]++
+		}
 	}
 	n := len(s.x)
 	s.columns = make([][]float32, 2*q)

@@ -489,19 +489,56 @@ func (w *window) spikes() bool {
 	return clean.Residual(w.r, w.recipe.SpikeThreshold, w.skip)+cleared > 0
 }
 
-// spare clears the residuals where a band may lie that may be as narrow as a cosmic ray: one spectrum cannot tell the two apart.
+// spare replaces the residuals where a band may lie that may be as narrow as a cosmic ray. One spectrum cannot tell the two
+// apart: the fit may have taken the ray for the band. The other pixels of the map can, if they show the band: its usual
+// profile, as high as the median channel on it says, leaves a ray as a residual. Without them nothing counts as a ray there.
 func (w *window) spare() {
 	for k, b := range w.Bands {
 		if !b.Narrow {
 			continue
 		}
 		i := w.problem.Band(k)
+		low, high := w.lo[i+line.Position]-b.Width, w.hi[i+line.Position]+b.Width
+		known := w.usual[k].width > 0
+		if known {
+			known = w.compare(k, low, high)
+		}
 		for c, x := range w.x {
-			if x > w.lo[i+line.Position]-b.Width && x < w.hi[i+line.Position]+b.Width {
+			if !known && x > low && x < high {
 				w.r[c] = 0
 			}
 		}
 	}
+}
+
+// compare sets the residuals between low and high to those against the band's usual profile. It reports false where the band
+// has too few channels to tell.
+func (w *window) compare(k int, low, high float64) bool {
+	at := w.usual[k]
+	i, n := w.problem.Band(k), w.shapes[k].Len()
+	p := w.sums[:n]
+	copy(p, w.p[i:i+n])
+	p[line.Height], p[line.Position], p[line.Width] = 1, at.position, at.width
+	w.shapes[k].Eval(w.curve, nil, w.x, p)
+	w.problem.Base(w.bridged, w.p)
+	ratios := w.scratch[:0]
+	for c, f := range w.curve {
+		if f > 0.2 && !w.holes[c] {
+			ratios = append(ratios, (w.problem.Y[c]-w.bridged[c])/f)
+		}
+	}
+	if len(ratios) < 3 {
+		return false
+	}
+	height := clean.Median(ratios)
+	for c, x := range w.x {
+		if x > low && x < high {
+			// The line moves and widens a little from pixel to pixel: a quarter of what it has there is no surprise.
+			d := w.problem.Y[c] - w.bridged[c] - height*w.curve[c]
+			w.r[c] = d / math.Hypot(w.sigma[c], 0.25/w.recipe.SpikeThreshold*math.Abs(height)*w.curve[c])
+		}
+	}
+	return true
 }
 
 // elsewhere looks in the residuals for a band that is not at its expected place. It must stand out by two standard errors more

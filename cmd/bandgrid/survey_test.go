@@ -343,7 +343,7 @@ func TestSurveyOfABrokenRun(t *testing.T) {
 	}{
 		{"cut.txt", string(wide[:len(wide)*2/3]), exitPartly, survey.Pixels{Expected: 98, Read: 93, Fitted: 92, Failed: 1, Missing: 5}, "middle"},
 		{"bad rows.txt", strings.Join(bad, ""), exitPartly, survey.Pixels{Expected: 140, Read: 140, Fitted: 138, Failed: 2}, "line 21"},
-		{"holes.txt", strings.Join(holes, ""), exitDone, survey.Pixels{Expected: 140, Read: 140, Fitted: 140}, ""},
+		{"holes.txt", strings.Join(holes, ""), exitDone, survey.Pixels{Expected: 140, Read: 140, Fitted: 140, Holes: 2, Holed: 1}, ""},
 		{"again.txt", strings.Join(again, ""), exitDone, survey.Pixels{Expected: 140, Read: 142, Fitted: 140, Repeated: 2}, ""},
 	} {
 		dir := t.TempDir()

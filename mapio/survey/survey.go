@@ -23,12 +23,14 @@ type Quantity struct {
 
 // Pixels counts what became of a run's pixels.
 type Pixels struct {
-	Expected int `json:"expected"` // cells of the grid
-	Read     int `json:"read"`     // pixels found in the run, readable or not
-	Fitted   int `json:"fitted"`   // cells with a converged fit
-	Failed   int `json:"failed"`   // pixels that could not be read or fitted
-	Repeated int `json:"repeated"` // pixels measured again later in the run: the last complete one counts
-	Missing  int `json:"missing"`  // cells without a pixel
+	Expected int `json:"expected"`                // cells of the grid
+	Read     int `json:"read"`                    // pixels found in the run, readable or not
+	Fitted   int `json:"fitted"`                  // cells with a converged fit
+	Failed   int `json:"failed"`                  // pixels that could not be read or fitted
+	Repeated int `json:"repeated"`                // pixels measured again later in the run: the last complete one counts
+	Missing  int `json:"missing"`                 // cells without a pixel
+	Holes    int `json:"channels_without_counts"` // in the windows: saturated, or the run has none; they were left out
+	Holed    int `json:"pixels_with_such"`
 	Excluded int `json:"excluded"` // pixels left out since they lie in an area that was excluded
 }
 
