@@ -38,6 +38,10 @@ func (p *Plan) Learn(ctx context.Context, sample []scan.Pixel, workers int) (*Pl
 	slices.SortStableFunc(sample, func(a, b scan.Pixel) int { return cmp.Or(cmp.Compare(a.X, b.X), cmp.Compare(a.Y, b.Y)) })
 	q := *p
 	q.Learned = &survey.Learned{Pixels: len(sample)}
+	q.windows = slices.Clone(p.windows)
+	if p.Preparation.Substrate != nil {
+		q.givenSubstrate()
+	}
 	var looks []look
 	for range 2 { // the second time with the noise known: what is misfit shows only then
 		var err error
@@ -46,8 +50,7 @@ func (p *Plan) Learn(ctx context.Context, sample []scan.Pixel, workers int) (*Pl
 		}
 		q.learnNoise(looks)
 	}
-	q.windows = slices.Clone(p.windows)
-	if p.Recipe.Substrate {
+	if p.Recipe.Substrate && p.Preparation.Substrate == nil {
 		q.learnSubstrate(sample, looks)
 		if len(q.Learned.Substrate) > 0 { // what was the substrate's looked like noise before
 			var err error

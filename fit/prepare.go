@@ -16,6 +16,9 @@ type Preparation struct {
 	// Response is the spectrometer's relative sensitivity, one value per channel, above 0: counts are divided by it. The noise is
 	// still that of the counts as measured. Where it is NaN it is not known, and the channel is left out.
 	Response []float64
+	// Substrate is the spectrum of the bare substrate, one value per channel of the axis, prepared: what it shows beside the
+	// background becomes a term of the background, in place of what the map's own bare pixels show. nil: theirs.
+	Substrate []float64
 }
 
 // Check returns an error where the preparation does not go with an axis of that many channels.
@@ -27,6 +30,9 @@ func (p Preparation) Check(channels int) error {
 		if math.IsNaN(v) || math.IsInf(v, 0) {
 			return fmt.Errorf("dark spectrum: channel %d is %g", i, v)
 		}
+	}
+	if n := len(p.Substrate); n > 0 && n != channels {
+		return fmt.Errorf("the substrate's spectrum has %d channels, the run %d", n, channels)
 	}
 	if n := len(p.Response); n > 0 && n != channels {
 		return fmt.Errorf("the response has %d channels, the run %d", n, channels)
@@ -52,6 +58,8 @@ type preparer struct {
 	removed []float64 // light that was taken off but makes noise, in counts as measured; nil without
 	base    *clean.Background
 	line    []float64 // the background of the whole spectrum, prepared
+	bridged []bool    // channels that say nothing of it: holes and cosmic rays
+	scratch []float64
 }
 
 func newPreparer(p Preparation, d Detector, axis scan.Axis, baseline clean.Baseline) *preparer {
@@ -77,6 +85,7 @@ func newPreparer(p Preparation, d Detector, axis scan.Axis, baseline clean.Basel
 		low, high := axis.Range()
 		q.base = clean.NewBackground(baseline, channels, (high-low)/float64(channels-1))
 		q.line, q.removed = make([]float64, channels), make([]float64, channels)
+		q.bridged, q.scratch = make([]bool, channels), make([]float64, 2*channels)
 	}
 	return q
 }
@@ -98,7 +107,9 @@ func (q *preparer) take(counts []float32) {
 	if q.base == nil {
 		return
 	}
-	q.base.Estimate(q.line, q.counts, q.holes)
+	copy(q.bridged, q.holes)
+	clean.Differences(q.counts, q.bridged, 8, q.scratch)
+	q.base.Estimate(q.line, q.counts, q.bridged)
 	for i, z := range q.line {
 		q.removed[i] = 0
 		if !q.holes[i] {

@@ -10,6 +10,29 @@ import (
 	"bandgrid/mapio/scan"
 )
 
+// givenSubstrate adds to the background of each window what a spectrum of the substrate shows beside the polynomial.
+func (p *Plan) givenSubstrate() {
+	for i := range p.windows {
+		w := &p.windows[i]
+		term := make([]float64, len(w.channels))
+		known := true
+		for k, c := range w.channels {
+			term[k] = p.Preparation.Substrate[c]
+			known = known && !math.IsNaN(term[k])
+		}
+		if !known { // the spectrum does not reach over the window
+			continue
+		}
+		project(term, orthonormal(w.basis))
+		if !(floats.Norm(term, 2) > 1e-9*floats.Norm(p.Preparation.Substrate, 2)) {
+			continue
+		}
+		w.basis = append(slices.Clone(w.basis), term)
+		w.weaken()
+		p.Learned.Substrate = append(p.Learned.Substrate, w.Name)
+	}
+}
+
 // leastBare is how many bare pixels a sample must have for the substrate's own spectrum: its noise is then a tenth of a pixel's.
 const leastBare = 100
 

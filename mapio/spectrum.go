@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"math"
+	"slices"
 
 	"bandgrid/mapio/scan"
 	"bandgrid/mapio/table"
@@ -15,6 +16,31 @@ type Spectrum struct {
 	Counts []float32 // NaN where there are none
 	Laser  float64   // nm; 0 where neither the file nor the caller says
 	Pixels int       // spectra that it is the mean of
+}
+
+// On returns the spectrum on another axis by linear interpolation between its channels, NaN beyond them.
+func (s *Spectrum) On(axis scan.Axis) []float64 {
+	x, y := slices.Clone(s.Axis), make([]float64, len(s.Counts))
+	for i, c := range s.Counts {
+		y[i] = float64(c)
+	}
+	if s.Axis.Descending() {
+		slices.Reverse(x)
+		slices.Reverse(y)
+	}
+	out := make([]float64, len(axis))
+	for i, v := range axis {
+		k, exact := slices.BinarySearch(x, v)
+		switch {
+		case exact:
+			out[i] = y[k]
+		case k == 0 || k == len(x):
+			out[i] = math.NaN()
+		default:
+			out[i] = y[k-1] + (y[k]-y[k-1])*(v-x[k-1])/(x[k]-x[k-1])
+		}
+	}
+	return out
 }
 
 // OpenSpectrum reads a single spectrum from two columns of delimited text, or the mean of all spectra of a run. The file may be

@@ -62,6 +62,7 @@ type surveyOptions struct {
 	dark        float64
 	calibration string
 	trackLine   string
+	substrate   string
 	flip        []string
 	exclude     string
 	saturation  float64
@@ -73,6 +74,7 @@ type surveyOptions struct {
 
 	places fit.RunOptions // from workers, flip and exclude
 	calib  *calib.File    // from calibration
+	bare   *mapio.Spectrum
 }
 
 func (o *surveyOptions) add(fs *pflag.FlagSet) {
@@ -91,6 +93,7 @@ func (o *surveyOptions) add(fs *pflag.FlagSet) {
 	fs.Float64Var(&o.instrument, "instrument-width", 0, "FWHM of the spectrometer's line in `cm-1`, where known: widths are then the natural ones")
 	fs.StringVar(&o.calibration, "calibration", "", "`file` from bandgrid calibrate: corrects the shift axis and the response")
 	fs.StringVar(&o.trackLine, "track-line", "", "`band` that every spectrum shows (si), whose drift over the run is taken out of all positions")
+	fs.StringVar(&o.substrate, "substrate", "", "`spectrum` of the bare substrate, whose lines become part of the background (default: the map's own bare pixels)")
 	fs.Float64Var(&o.dark, "dark", 0, "`counts` that the detector gives without light, taken off every channel")
 	fs.StringSliceVar(&o.flip, "flip", nil, "stage axis that runs the other way: `x`, y, or x,y")
 	fs.StringVar(&o.exclude, "exclude", "", "`file` with polygons to leave out (metal, tape): lines name,x,y, a vertex each, um")
@@ -140,6 +143,16 @@ func (o *surveyOptions) run(ctx context.Context, runs []string, std streams) err
 	}
 	if err := o.place(); err != nil {
 		return err
+	}
+	if o.substrate != "" {
+		if o.bare, err = mapio.OpenSpectrum(ctx, o.substrate, mapio.Options{Laser: o.laser}); err != nil {
+			return err
+		}
+		if o.calib != nil && o.calib.Axis != nil {
+			if o.bare.Axis, err = o.calib.Axis.Apply(o.bare.Axis); err != nil {
+				return fmt.Errorf("%s: %w", o.substrate, err)
+			}
+		}
 	}
 	// Results stay in memory until the end, and little else does: a smaller heap costs hardly any time here.
 	defer debug.SetGCPercent(debug.SetGCPercent(40))
@@ -222,6 +235,9 @@ func (o *surveyOptions) calibrated(sc *scan.Scan) (scan.Axis, error) {
 func (o *surveyOptions) prepare(plan *fit.Plan) {
 	if o.dark != 0 {
 		plan.Preparation.Dark = []float64{o.dark}
+	}
+	if o.bare != nil {
+		plan.Preparation.Substrate = o.bare.On(plan.Axis)
 	}
 	if o.calib != nil && o.calib.Response != nil {
 		plan.Preparation.Response = o.calib.Response.On(plan.Axis)
@@ -539,6 +555,9 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 	}
 	if len(o.flip) > 0 {
 		s.Settings["flip"] = strings.Join(o.flip, ",")
+	}
+	if o.substrate != "" {
+		s.Settings["substrate"] = filepath.Base(o.substrate)
 	}
 	if o.exclude != "" {
 		s.Settings["exclude"] = filepath.Base(o.exclude)

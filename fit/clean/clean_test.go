@@ -112,3 +112,39 @@ func TestHarmless(t *testing.T) {
 		t.Errorf("skip %v, want %v", skip, want)
 	}
 }
+
+func TestDifferences(t *testing.T) {
+	r := rand.New(rand.NewPCG(5, 1))
+	const n = 1000
+	found, false1 := 0, 0
+	for range 200 {
+		y, skip := make([]float64, n), make([]bool, n)
+		for i := range y {
+			u := (float64(i) - 500) / 12 // a band 24 channels wide and 300 times the noise
+			y[i] = 200*math.Sin(float64(i)/300) + 300/(1+u*u) + r.NormFloat64()
+		}
+		at := 30 + r.IntN(400)
+		y[at] += 40
+		y[at+1] += 30 * r.Float64()
+		skip[700] = true
+		y[700] = 1e9 // left out already
+		marked := Differences(y, skip, 8, make([]float64, 2*n))
+		if skip[at] {
+			found++
+		}
+		for i, s := range skip {
+			if s && (i < at-1 || i > at+3) && i != 700 {
+				false1++
+			}
+		}
+		if marked > 5 {
+			t.Errorf("%d channels marked", marked)
+		}
+	}
+	if found < 198 || false1 > 1 { // 200,000 channels
+		t.Errorf("%d of 200 rays found, %d other channels marked", found, false1)
+	}
+	if got := Differences(make([]float64, 10), make([]bool, 10), 8, make([]float64, 20)); got != 0 {
+		t.Errorf("%d channels marked in a constant", got)
+	}
+}
