@@ -80,6 +80,9 @@ func (f *Fits) Survey() (*survey.Survey, error) {
 		s.Warnings = append(s.Warnings, fmt.Sprintf("the run ends in mid-line in pixel %d; that pixel is left out, as its last number may be cut off", i))
 		chosen, seen = f.choose(cell, read, grid.Cells())
 	}
+	for _, slab := range f.slabs {
+		s.Spikes = append(s.Spikes, slab.spikes...)
+	}
 	s.X, s.Y = make([]float32, grid.Cells()), make([]float32, grid.Cells())
 	onCell := 0
 	for c, i := range chosen {

@@ -11,6 +11,7 @@ type Fitter struct {
 	plan     *Plan
 	preparer *preparer
 	windows  []*window
+	spikes   []float32 // shifts of the last spectrum's channels that cosmic rays hit
 	holes    int       // channels of the last spectrum that were left out for want of a usable count
 	grad     []float64 // of a quantity by a window's parameters
 	other    []float64
@@ -25,6 +26,7 @@ func NewFitter(plan *Plan) *Fitter {
 		f.grad = append(f.grad, make([]float64, max(0, len(w.p)-len(f.grad)))...)
 	}
 	f.other = make([]float64, len(f.grad))
+	f.spikes = make([]float32, 0, plan.channelCount())
 	return f
 }
 
@@ -39,7 +41,7 @@ func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 	var sum, weight float64
 	spikes := 0
 	f.preparer.take(counts)
-	f.holes = 0
+	f.holes, f.spikes = 0, f.spikes[:0]
 	for _, w := range f.windows {
 		fitted := w.fit(f.preparer)
 		for _, hole := range w.holes {
@@ -59,6 +61,11 @@ func (f *Fitter) Fit(counts []float32, v, se []float32) bool {
 		sum += w.chi2 * float64(w.points)
 		weight += float64(w.points)
 		spikes += w.spikeChannels()
+		for i, s := range w.skip {
+			if s && !w.holes[i] && len(f.spikes) < cap(f.spikes) {
+				f.spikes = append(f.spikes, float32(w.x[i]))
+			}
+		}
 		for k := range w.Bands {
 			f.band(w, k, v, se)
 			if !w.found[k] {

@@ -8,6 +8,7 @@ import (
 	"sync"
 
 	"bandgrid/mapio/scan"
+	"bandgrid/mapio/survey"
 )
 
 // RunOptions steer [Run]; the zero value works.
@@ -51,8 +52,9 @@ type Fits struct {
 type slab struct {
 	seq      int
 	x, y     []float64
-	read     []bool      // the pixel could be read, and is not left out
-	left     int         // pixels that are left out
+	read     []bool // the pixel could be read, and is not left out
+	left     int    // pixels that are left out
+	spikes   []survey.Spike
 	holes    [2]int      // channels without a usable count, and pixels that have such
 	last     bool        // the run ends inside the last pixel's last line
 	columns  [][]float32 // values, then standard errors, of each of the plan's columns
@@ -132,6 +134,9 @@ func (w *worker) block(block scan.Block) *slab {
 		}
 		s.last = pixel.Open
 		w.fitter.Fit(pixel.Counts, row[:q], row[q:])
+		for _, shift := range w.fitter.spikes {
+			s.spikes = append(s.spikes, survey.Spike{X: float32(x), Y: float32(y), Shift: shift})
+		}
 		if h := w.fitter.holes; h > 0 {
 			s.holes[0] += h
 			s.holes[1]++

@@ -19,7 +19,7 @@ import (
 // A bundle says what is written of a survey besides its numbers.
 type bundle struct {
 	recipe  fit.Recipe
-	table   bool // pixels.csv too
+	table   bool // pixels.csv and spikes.csv too
 	workers int
 	traces  []survey.Trace // spectra to show
 }
@@ -30,9 +30,10 @@ func (b bundle) write(dir string, s *survey.Survey) error {
 		return err
 	}
 	if b.table {
-		err := survey.WriteFile(filepath.Join(dir, "pixels.csv"), func(w io.Writer) error { return survey.WritePixels(w, s) })
-		if err != nil {
-			return err
+		for name, write := range map[string]func(io.Writer, *survey.Survey) error{"pixels.csv": survey.WritePixels, "spikes.csv": survey.WriteSpikes} {
+			if err := survey.WriteFile(filepath.Join(dir, name), func(w io.Writer) error { return write(w, s) }); err != nil {
+				return err
+			}
 		}
 	}
 	workers := b.workers

@@ -99,7 +99,7 @@ func (o *surveyOptions) add(fs *pflag.FlagSet) {
 	fs.StringVar(&o.exclude, "exclude", "", "`file` with polygons to leave out (metal, tape): lines name,x,y, a vertex each, um")
 	fs.Float64Var(&o.saturation, "saturation", 0, "`counts` from which on a channel is full and left out")
 	fs.StringToStringVar(&o.notes, "note", nil, "`KEY=VALUE` for survey and report: sample, power, exposure ...")
-	fs.BoolVar(&o.table, "table", false, "write pixels.csv too: all quantities, a row per pixel")
+	fs.BoolVar(&o.table, "table", false, "write pixels.csv, all quantities, a row per pixel, and spikes.csv, the channels that cosmic rays hit")
 	fs.IntVar(&o.workers, "workers", 0, "`number` of workers (default: one per processor)")
 	fs.BoolVarP(&o.force, "force", "f", false, "replace a survey that is already there")
 	fs.BoolVarP(&o.quiet, "quiet", "q", false, "no progress, no summary")

@@ -527,6 +527,14 @@ func TestSurveyFiles(t *testing.T) {
 	if err != nil || bytes.Count(rows, []byte("\n")) != 141 {
 		t.Errorf("pixels.csv: %d lines, %v", bytes.Count(rows, []byte("\n")), err)
 	}
+	listed, err := os.ReadFile(filepath.Join(folder, "spikes.csv"))
+	total := 0
+	for _, v := range load(t, folder).Map("spikes").Values {
+		total += int(v)
+	}
+	if err != nil || bytes.Count(listed, []byte("\n")) != total+1 || total == 0 {
+		t.Errorf("spikes.csv: %d lines for %d channels, %v", bytes.Count(listed, []byte("\n")), total, err)
+	}
 	if page, err := os.ReadFile(filepath.Join(folder, "report.html")); err != nil || bytes.Contains(page, []byte("http://")) || bytes.Contains(page, []byte("https://")) {
 		t.Errorf("the report asks for something beyond its own file, or: %v", err)
 	}

@@ -207,3 +207,18 @@ func WritePixels(w io.Writer, s *Survey) error {
 	_, err := w.Write(b)
 	return err
 }
+
+// WriteSpikes writes the channels that were left out because of cosmic rays: place and shift, a row each.
+func WriteSpikes(w io.Writer, s *Survey) error {
+	c := csv.NewWriter(w)
+	if err := c.Write([]string{"x_um", "y_um", "shift_cm-1"}); err != nil {
+		return err
+	}
+	for _, k := range s.Spikes {
+		if err := c.Write([]string{number(float64(k.X)), number(float64(k.Y)), strconv.FormatFloat(float64(k.Shift), 'f', 2, 64)}); err != nil {
+			return err
+		}
+	}
+	c.Flush()
+	return c.Error()
+}

@@ -75,6 +75,7 @@ type Survey struct {
 	X, Y    []float32  // stage position of each cell, um: as measured, or the cell's centre where the pixel is missing
 	Maps    []Quantity // in the order in which reports list them
 	Regions []Region   // the whole map first, then by falling area
+	Spikes  []Spike    // channels left out because of cosmic rays, in order of acquisition; not read back
 }
 
 // Map returns the quantity of that name, or nil.
@@ -111,6 +112,9 @@ type Region struct {
 	Stats     []Stat  // one per quantity
 	Cells     []int32 // indices into the maps, rising; not written to regions.csv
 }
+
+// A Spike is a channel that was left out because of a cosmic ray.
+type Spike struct{ X, Y, Shift float32 } // um, um, cm-1
 
 // A Stat summarises one quantity over a region, its boundary ring left out where the region is large enough.
 type Stat struct {
