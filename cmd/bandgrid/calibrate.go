@@ -229,6 +229,9 @@ func describeAxis(w io.Writer, c *calib.Calibration) {
 		}
 		fmt.Fprintln(w)
 	}
+	if c.LaserOffsetSE > 0 {
+		fmt.Fprintf(w, "the laser line's wavenumber is off by %+.2f ± %.2f cm-1 against %g nm\n", -c.LaserOffset, c.LaserOffsetSE, c.Laser)
+	}
 	if c.Common > 0 {
 		fmt.Fprintf(w, "±%.1f cm-1 of that is the laser line, which a lamp does not see: measure silicon or another substance beside it\n", c.Common)
 	}

@@ -87,7 +87,7 @@ func match(m Measured, laser, reach float64) ([]pair, error) {
 		if blended {
 			continue
 		}
-		p := pair{reference: m.Reference.Name, true: shifts[near], measured: f.Position, weight: f.Height, se: math.Hypot(f.SE, deviations[near]), left: d}
+		p := pair{reference: m.Reference.Name, lamp: m.Reference.Lamp, true: shifts[near], measured: f.Position, weight: f.Height, se: math.Hypot(f.SE, deviations[near]), left: d}
 		if old, ok := taken[near]; ok {
 			if pairs[old].weight < p.weight {
 				pairs[old] = p

@@ -40,11 +40,15 @@ type Calibration struct {
 	Covariance []float64 `json:"covariance_cm-2"`   // row-major
 	From       float64   `json:"from_cm-1"`         // lowest and highest line used, on the corrected axis
 	To         float64   `json:"to_cm-1"`
-	Common     float64   `json:"common_cm-1"` // standard deviation of what all lines have in common: the laser line of lamps
-	Lines      []Used    `json:"lines"`
-	Missed     int       `json:"missed"` // lines found that belong to no line of the reference
-	RMS        float64   `json:"rms_cm-1"`
-	Chi2       float64   `json:"chi2"`
+	// LaserOffset is by how much the laser line's wavenumber is off what was given, where lamps and substances were measured: the
+	// published places of the lamp's lines are that much too high. 0 where it is not known.
+	LaserOffset   float64 `json:"laser_offset_cm-1"`
+	LaserOffsetSE float64 `json:"laser_offset_se_cm-1"`
+	Common        float64 `json:"common_cm-1"` // standard deviation of what all lines have in common: the laser line of lamps
+	Lines         []Used  `json:"lines"`
+	Missed        int     `json:"missed"` // lines found that belong to no line of the reference
+	RMS           float64 `json:"rms_cm-1"`
+	Chi2          float64 `json:"chi2"`
 }
 
 // A Used is a line that the calibration rests on.
@@ -65,6 +69,7 @@ var ErrMismatch = errors.New("the lines do not match the reference")
 // A pair is a line found and the one that it is taken for.
 type pair struct {
 	reference        string
+	lamp             bool
 	true, measured   float64
 	weight, se, left float64
 }
@@ -81,13 +86,13 @@ func Solve(measured []Measured, opt Options) (*Calibration, error) {
 		reach = 40
 	}
 	var pairs []pair
-	missed, lamps := 0, true
+	missed, lamps, substances := 0, false, false
 	c := &Calibration{Laser: opt.Laser, Order: opt.Order}
 	for _, m := range measured {
 		if m.Reference.Lamp && !(opt.Laser > 0) {
 			return nil, fmt.Errorf("%s: a lamp's lines are wavelengths, so the laser line is needed", m.Reference.Name)
 		}
-		lamps = lamps && m.Reference.Lamp
+		lamps, substances = lamps || m.Reference.Lamp, substances || !m.Reference.Lamp
 		matched, err := match(m, opt.Laser, reach)
 		if err != nil {
 			return nil, fmt.Errorf("%s: %w", m.Reference.Name, err)
@@ -100,6 +105,9 @@ func Solve(measured []Measured, opt Options) (*Calibration, error) {
 	if opt.Order > 0 {
 		need += 2
 	}
+	if lamps && substances {
+		need++
+	}
 	if len(pairs) < need {
 		return nil, fmt.Errorf("%w: %d matched, order %d needs %d; take a lower order or a reference with more lines", ErrTooFew, len(pairs), opt.Order, need)
 	}
@@ -111,7 +119,7 @@ func Solve(measured []Measured, opt Options) (*Calibration, error) {
 	c.Center, c.Half = (low+high)/2, max((high-low)/2, 1)
 	// A line that is far off the others is another line: leave out the worst until all fit.
 	for {
-		if err := c.solve(pairs); err != nil {
+		if err := c.solve(pairs, lamps && substances); err != nil {
 			return nil, err
 		}
 		worst, at := 0.0, -1
@@ -141,7 +149,7 @@ func Solve(measured []Measured, opt Options) (*Calibration, error) {
 		}
 		return 1
 	})
-	if lamps {
+	if lamps && !substances {
 		se := opt.LaserSE
 		if se == 0 {
 			se = 0.1
@@ -151,16 +159,24 @@ func Solve(measured []Measured, opt Options) (*Calibration, error) {
 	return c, nil
 }
 
-// solve fits the polynomial to the pairs and fills in what follows from it, and the pairs' residuals.
-func (c *Calibration) solve(pairs []pair) error {
+// solve fits the polynomial to the pairs and fills in what follows from it, and the pairs' residuals. Where lamps and substances
+// are mixed, the laser line is an unknown too: it shifts the lamps' lines against the others.
+func (c *Calibration) solve(pairs []pair, mixed bool) error {
 	n, m := len(pairs), c.Order+1
-	a, y := mat.NewDense(n, m, nil), mat.NewVecDense(n, nil)
+	unknowns := m
+	if mixed {
+		unknowns++
+	}
+	a, y := mat.NewDense(n, unknowns, nil), mat.NewVecDense(n, nil)
 	for i, p := range pairs {
 		t := (p.measured - c.Center) / c.Half
 		v := 1 / p.se
 		for k := range m {
 			a.Set(i, k, v)
 			v *= t
+		}
+		if mixed && p.lamp {
+			a.Set(i, m, 1/p.se)
 		}
 		y.SetVec(i, (p.true-p.measured)/p.se)
 	}
@@ -176,23 +192,33 @@ func (c *Calibration) solve(pairs []pair) error {
 		return fmt.Errorf("%w for order %d: they lie too close together", ErrTooFew, c.Order)
 	}
 	c.Coeffs = slices.Clone(x.RawVector().Data[:m])
+	c.LaserOffset, c.LaserOffsetSE = 0, 0
+	if mixed {
+		c.LaserOffset = x.AtVec(m)
+	}
 	c.Covariance = make([]float64, m*m)
 	sum, square := 0.0, 0.0
 	for i := range pairs {
 		p := &pairs[i]
 		p.left = p.true - p.measured - c.correction(p.measured)
+		if p.lamp {
+			p.left -= c.LaserOffset
+		}
 		sum += p.left * p.left / (p.se * p.se)
 		square += p.left * p.left
 	}
 	c.RMS = math.Sqrt(square / float64(n))
 	c.Chi2 = 1
-	if n > m {
-		c.Chi2 = sum / float64(n-m)
+	if n > unknowns {
+		c.Chi2 = sum / float64(n-unknowns)
 	}
 	for i := range m {
 		for k := range m {
 			c.Covariance[i*m+k] = inverse.At(i, k) * max(1, c.Chi2)
 		}
+	}
+	if mixed {
+		c.LaserOffsetSE = math.Sqrt(inverse.At(m, m) * max(1, c.Chi2))
 	}
 	return nil
 }
