@@ -5,39 +5,15 @@ import (
 	"testing"
 
 	"bandgrid/fit"
-	"bandgrid/fit/carbon"
 )
 
 func TestExamples(t *testing.T) {
 	t.Parallel()
 	scene := flakes(31)
 	scene.Stage.Cols, scene.Stage.Rows, scene.Stage.DX = 60, 45, 0.8
-	if err := scene.Prepare(); err != nil {
-		t.Fatal(err)
-	}
-	sc := scene.Scan()
-	plan, err := fit.NewPlan(fit.Graphene(), sc.Axis, sc.Laser, fit.Detector{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	s, err := fits.Survey()
-	if err != nil {
-		t.Fatal(err)
-	}
-	s.Laser = sc.Laser
-	if err := fit.Apply(s, append(fit.RatioSteps(fit.Graphene()), carbon.Steps(carbon.Settings{})...)); err != nil {
-		t.Fatal(err)
-	}
+	r := learned(t, scene, fit.Graphene(), nil).interpreted(t)
 	titles := map[string]bool{}
-	for _, trace := range fit.Examples(s, plan, sample, fit.RunOptions{}) {
+	for _, trace := range fit.Examples(r.Survey, r.plan, r.sample, fit.RunOptions{}) {
 		titles[trace.Title] = true
 		if len(trace.Windows) != 2 {
 			t.Errorf("%s: %d windows", trace.Title, len(trace.Windows))

@@ -12,29 +12,7 @@ func makeupsOf(t *testing.T, n int, material synth.Object, signal synth.Signal, 
 	t.Helper()
 	scene := synth.Uniform(n, material, synth.Instrument{Background: 300, ReadNoise: 4, From: 2500, To: 2900, Channels: 300}, seed)
 	scene.Signal = signal
-	if err := scene.Prepare(); err != nil {
-		t.Fatal(err)
-	}
-	sc := scene.Scan()
-	plan, err := fit.NewPlan(fit.Graphene(), sc.Axis, sc.Laser, fit.Detector{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	if plan, err = plan.Learn(t.Context(), sample, 0); err != nil {
-		t.Fatal(err)
-	}
-	fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	s, err := fits.Survey()
-	if err != nil {
-		t.Fatal(err)
-	}
+	s := learned(t, scene, fit.Graphene(), nil)
 	counts := map[float32]float64{}
 	for _, v := range s.Map("2d_components").Values {
 		counts[v] += 100 / float64(n)

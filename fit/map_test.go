@@ -7,6 +7,7 @@ import (
 	"bandgrid/fit"
 	"bandgrid/fit/carbon"
 	"bandgrid/fit/synth"
+	"bandgrid/mapio/scan"
 	"bandgrid/mapio/survey"
 )
 
@@ -68,6 +69,56 @@ func surveyOf(t *testing.T, scene *synth.Scene, detector fit.Detector) (*survey.
 		truth[tr.Row*s.Grid.Cols+tr.Col] = tr
 	}
 	return s, truth
+}
+
+// A result is what a scene gave: fitted by a plan that has looked at a sample, and laid out on the grid.
+type result struct {
+	*survey.Survey
+	plan   *fit.Plan
+	sample []scan.Pixel
+	axis   scan.Axis
+}
+
+// learned fits a scene as the command does, by a recipe. change, where not nil, is done to the plan before it learns.
+func learned(t *testing.T, scene *synth.Scene, recipe fit.Recipe, change func(*fit.Plan)) result {
+	t.Helper()
+	if err := scene.Prepare(); err != nil {
+		t.Fatal(err)
+	}
+	sc := scene.Scan()
+	plan, err := fit.NewPlan(recipe, sc.Axis, sc.Laser, fit.Detector{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if change != nil {
+		change(plan)
+	}
+	sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if plan, err = plan.Learn(t.Context(), sample, 0); err != nil {
+		t.Fatal(err)
+	}
+	fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, err := fits.Survey()
+	if err != nil {
+		t.Fatal(err)
+	}
+	s.Laser = sc.Laser
+	return result{s, plan, sample, sc.Axis}
+}
+
+// interpreted adds ratios and layer numbers.
+func (r result) interpreted(t *testing.T) result {
+	t.Helper()
+	if err := fit.Apply(r.Survey, append(fit.RatioSteps(fit.Graphene()), carbon.Steps(carbon.Settings{})...)); err != nil {
+		t.Fatal(err)
+	}
+	return r
 }
 
 // A pixel is pure where at least 98 % of the spot lie on one material.

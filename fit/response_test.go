@@ -5,9 +5,7 @@ import (
 	"testing"
 
 	"bandgrid/fit"
-	"bandgrid/fit/carbon"
 	"bandgrid/fit/clean"
-	"bandgrid/mapio/survey"
 )
 
 // TestResponse has a spectrometer that sees 2D by 35 % worse than G. Corrected, 2D/G and the layer number are right, and the
@@ -19,40 +17,15 @@ func TestResponse(t *testing.T) {
 		scene := flakes(21)
 		scene.Stage.Cols, scene.Stage.Rows, scene.Stage.DX = 60, 45, 0.8
 		scene.Instrument.Response = 0.65
-		if err := scene.Prepare(); err != nil {
-			t.Fatal(err)
-		}
-		sc := scene.Scan()
-		plan, err := fit.NewPlan(fit.Graphene(), sc.Axis, sc.Laser, fit.Detector{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		if correct {
-			for _, x := range sc.Axis {
-				plan.Preparation.Response = append(plan.Preparation.Response, response(x))
+		s := learned(t, scene, fit.Graphene(), func(plan *fit.Plan) {
+			for _, x := range plan.Axis {
+				if correct {
+					plan.Preparation.Response = append(plan.Preparation.Response, response(x))
+				}
 			}
-		}
-		sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		if plan, err = plan.Learn(t.Context(), sample, 0); err != nil {
-			t.Fatal(err)
-		}
-		fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		var s *survey.Survey
-		if s, err = fits.Survey(); err != nil {
-			t.Fatal(err)
-		}
-		s.Laser = sc.Laser
-		if err := fit.Apply(s, append(fit.RatioSteps(fit.Graphene()), carbon.Steps(carbon.Settings{})...)); err != nil {
-			t.Fatal(err)
-		}
+		}).interpreted(t)
 		g := scene.NewGenerator()
-		counts := make([]float32, len(sc.Axis))
+		counts := make([]float32, len(s.axis))
 		var ratio []float64
 		var right, all, z2, n float64
 		height := s.Map("2d_height")
@@ -78,15 +51,15 @@ func TestResponse(t *testing.T) {
 		}
 		median := clean.Median(ratio)
 		t.Logf("corrected %v: 2D/G %.3f of the truth in the median of %.0f pixels; layer number right in %.2f %% of %.0f; pulls of the 2D height %.2f; gain %.2f",
-			correct, median, n, 100*right/all, all, math.Sqrt(z2/n), plan.Learned.Gain)
+			correct, median, n, 100*right/all, all, math.Sqrt(z2/n), s.plan.Learned.Gain)
 		if !correct {
 			if !(math.Abs(median-0.65) <= 0.03) {
 				t.Errorf("uncorrected 2D/G is %.3f of the truth, 0.65 is due: the scene has lost its response", median)
 			}
 			continue
 		}
-		if !(math.Abs(median-1) <= 0.02) || !(right >= 0.97*all) || !(math.Sqrt(z2/n) <= 1.1) || !(math.Abs(plan.Learned.Gain-1) <= 0.1) {
-			t.Errorf("2D/G %.3f of the truth, layer number right in %.1f %%, pulls %.2f, gain %.2f", median, 100*right/all, math.Sqrt(z2/n), plan.Learned.Gain)
+		if !(math.Abs(median-1) <= 0.02) || !(right >= 0.97*all) || !(math.Sqrt(z2/n) <= 1.1) || !(math.Abs(s.plan.Learned.Gain-1) <= 0.1) {
+			t.Errorf("2D/G %.3f of the truth, layer number right in %.1f %%, pulls %.2f, gain %.2f", median, 100*right/all, math.Sqrt(z2/n), s.plan.Learned.Gain)
 		}
 	}
 }

@@ -19,42 +19,20 @@ func TestSiliconLineIsNeverASpike(t *testing.T) {
 		scene.Signal = synth.Signal{G: 300, Lines: []synth.Line{{Band: synth.Band{Name: "silicon", Position: 520.5, Width: 3, Height: 50 * math.Sqrt(316)}, PerLayer: 0.93}}}
 		scene.Spikes.Rate = 0.06 * 2400 / 40 // in 6 to 15 % of the pixels a ray near the line
 		scene.Objects = []synth.Object{{Layers: 1, Shape: synth.Shape{Disc: &synth.Disc{X: 8, Y: 6, Radius: 5}}}}
-		if err := scene.Prepare(); err != nil {
-			t.Fatal(err)
-		}
-		sc := scene.Scan()
-		plan, err := fit.NewPlan(fit.Graphene(), sc.Axis, sc.Laser, fit.Detector{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		if plan, err = plan.Learn(t.Context(), sample, 0); err != nil {
-			t.Fatal(err)
-		}
-		if plan.Learned.Bare < 100 {
-			t.Errorf("spacing %g: %d bare pixels", spacing, plan.Learned.Bare)
-		}
-		fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, err := fits.Survey()
-		if err != nil {
-			t.Fatal(err)
+		s := learned(t, scene, fit.Graphene(), nil)
+		if n := s.plan.Learned.Bare; n < 100 {
+			t.Errorf("spacing %g: %d bare pixels", spacing, n)
 		}
 		position, width := s.Map("si_position"), s.Map("si_width")
 		g := scene.NewGenerator()
-		counts := make([]float32, len(sc.Axis))
+		counts := make([]float32, len(s.axis))
 		var n, lost, touched, hit, misled, sum, sum2, wide float64
 		for i := range scene.Len() {
 			_, _, tr := g.Pixel(i, counts)
 			c := tr.Row*s.Grid.Cols + tr.Col
 			near := false
 			for _, channel := range tr.Spikes {
-				near = near || math.Abs(sc.Axis[channel]-520.5) < 40
+				near = near || math.Abs(s.axis[channel]-520.5) < 40
 			}
 			if near {
 				hit++

@@ -20,42 +20,20 @@ func TestSubstrateLines(t *testing.T) {
 		scene.Instrument = synth.Instrument{Spot: 0.6, ReadNoise: 4, Background: 300, Channels: 800}
 		scene.Signal = synth.Signal{G: 300, Lines: []synth.Line{{Band: synth.Band{Name: "silicon, third order", Position: 1440, Width: 70, Height: 60}, PerLayer: 0.93}}}
 		scene.Objects = []synth.Object{{Layers: 1, Shape: synth.Shape{Disc: &synth.Disc{X: 8, Y: 7, Radius: 6}}}}
-		if err := scene.Prepare(); err != nil {
-			t.Fatal(err)
-		}
 		recipe := fit.Graphene()
 		recipe.Substrate = way == "bare pixels"
-		sc := scene.Scan()
-		plan, err := fit.NewPlan(recipe, sc.Axis, sc.Laser, fit.Detector{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		if way == "spectrum" {
-			for _, x := range sc.Axis { // measured elsewhere: another background, twice the light
-				u := 2 * (x - 1440) / 70
-				plan.Preparation.Substrate = append(plan.Preparation.Substrate, 800-0.1*x+120/(1+u*u))
+		s := learned(t, scene, recipe, func(plan *fit.Plan) {
+			for _, x := range plan.Axis { // measured elsewhere: another background, twice the light
+				if u := 2 * (x - 1440) / 70; way == "spectrum" {
+					plan.Preparation.Substrate = append(plan.Preparation.Substrate, 800-0.1*x+120/(1+u*u))
+				}
 			}
-		}
-		sample, err := fit.Sample(t.Context(), scene.Scan(), fit.RunOptions{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		if plan, err = plan.Learn(t.Context(), sample, 0); err != nil {
-			t.Fatal(err)
-		}
-		if (len(plan.Learned.Substrate) > 0) != use {
-			t.Errorf("%s: lines seen in windows %v", way, plan.Learned.Substrate)
-		}
-		fits, err := fit.Run(t.Context(), sc, plan, fit.RunOptions{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, err := fits.Survey()
-		if err != nil {
-			t.Fatal(err)
+		})
+		if (len(s.plan.Learned.Substrate) > 0) != use {
+			t.Errorf("%s: lines seen in windows %v", way, s.plan.Learned.Substrate)
 		}
 		g := scene.NewGenerator()
-		counts := make([]float32, len(sc.Axis))
+		counts := make([]float32, len(s.axis))
 		ratio, se := s.Map("d_g_ratio").Values, s.Map("d_g_ratio").SE
 		var n, sum, sum2, z2 float64
 		for i := range scene.Len() {
