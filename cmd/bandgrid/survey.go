@@ -569,7 +569,7 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 
 // interpret adds what follows from the bands: ratios, layer number, regions.
 func (o *surveyOptions) interpret(s *survey.Survey, recipe fit.Recipe) error {
-	steps := append(fit.RatioSteps(recipe), carbon.Steps(carbon.Settings{Film: o.film, Oxide: o.oxide})...)
+	steps := append(fit.RatioSteps(recipe), carbon.All(carbon.Settings{Film: o.film, Oxide: o.oxide})...)
 	if err := fit.Apply(s, steps); err != nil {
 		return err
 	}

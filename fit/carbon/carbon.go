@@ -1,10 +1,11 @@
-// Package carbon says what the bands of graphene mean: how many layers there are at each pixel, with a probability.
+// Package carbon says what the bands of graphene mean at each pixel: how many layers there are, with a probability, how many
+// defects, how much strain and how many holes.
 //
 // It works on a survey's stored quantities only, so a survey can be interpreted again with other settings without refitting:
 //
 //	set := carbon.Settings{Film: carbon.Exfoliated, Oxide: 90}
 //	if err := set.Check(); err != nil { ... }
-//	err := fit.Apply(survey, carbon.Steps(set))
+//	err := fit.Apply(survey, carbon.All(set))
 package carbon
 
 import (
@@ -56,6 +57,11 @@ func (set Settings) Check() error {
 		return fmt.Errorf("instrument width %g cm-1: a value above 0 and up to 50 is needed, or 0 where it is unknown", w)
 	}
 	return nil
+}
+
+// All returns the steps of the package in their order: layer number, defects, strain and doping.
+func All(set Settings) []fit.Step {
+	return slices.Concat(Steps(set), DefectSteps(set), StrainSteps(set))
 }
 
 // Steps returns the steps that give layer_number and layer_probability. They run whichever of the windows the run has, and

@@ -45,6 +45,7 @@ func Summary(s *survey.Survey) []string {
 	}
 	for _, q := range []struct{ name, words, unit string }{
 		{"d_g_ratio", "D/G height ratio", ""}, {"g_position", "G position", " cm⁻¹"}, {"2d_width", "2D width", " cm⁻¹"},
+		{"strain", "Strain (biaxial)", " %"}, {"hole_density", "Hole density, 10¹² cm⁻²,", ""},
 	} {
 		m := s.Map(q.name)
 		if m == nil {
@@ -53,6 +54,33 @@ func Summary(s *survey.Survey) []string {
 		if median, spread, n := middle(m.Values, mask); n > 0 {
 			list = append(list, fmt.Sprintf("%s of %s: median %s, spread %s%s (%d pixels).", q.words, of, decimals(median, spread), decimals(spread, spread), q.unit, n))
 		}
+	}
+	return append(list, damage(s)...)
+}
+
+// damage says how many defects the single layers have, where that can be told.
+func damage(s *survey.Survey) (list []string) {
+	stage, density := s.Map("disorder_stage"), s.Map("defect_density")
+	if stage == nil || density == nil {
+		return nil
+	}
+	var undecided, beyond int
+	for _, v := range stage.Values {
+		switch v {
+		case 1.5:
+			undecided++
+		case 2:
+			beyond++
+		}
+	}
+	if median, spread, n := middle(density.Values, func(int) bool { return true }); n > 0 {
+		list = append(list, fmt.Sprintf("Defect density of single layers: median %.1e, spread %.1e cm⁻² (%d pixels); a scale error of 28 %% is common to all.", median, spread, n))
+	}
+	if undecided > 0 {
+		list = append(list, fmt.Sprintf("Near the turning point of D/G against dose, where few and many defects look alike: %s.", plural(undecided, "pixel")))
+	}
+	if beyond > 0 {
+		list = append(list, fmt.Sprintf("Beyond the turning point, on the way to amorphous carbon: %s.", plural(beyond, "pixel")))
 	}
 	return list
 }
