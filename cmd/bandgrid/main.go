@@ -30,7 +30,7 @@ type streams struct {
 	terminal bool // err is a terminal: progress may overwrite its line
 }
 
-var verbs = []verb{surveyVerb, calibrateVerb, simulateVerb}
+var verbs = []verb{surveyVerb, interpretVerb, calibrateVerb, simulateVerb}
 
 // Exit status, as documented in the README.
 const (

@@ -22,6 +22,7 @@ type bundle struct {
 	table   bool // pixels.csv and spikes.csv too
 	workers int
 	traces  []survey.Trace // spectra to show
+	kept    []byte         // or the figure of them from before
 }
 
 // write writes a survey's files into a folder: numbers, figures, report.
@@ -50,6 +51,9 @@ func (b bundle) write(dir string, s *survey.Survey) error {
 			return err
 		}
 		pictures = append(pictures, picture)
+	}
+	if b.kept != nil {
+		pictures = append(pictures, render.Picture{Name: "spectra", Title: spectraTitle, PNG: b.kept, Alt: spectraTitle + "."})
 	}
 	if err := os.MkdirAll(filepath.Join(dir, "figures"), 0o777); err != nil {
 		return err
@@ -84,6 +88,8 @@ func writeBytes(name string, data []byte) error {
 	})
 }
 
+const spectraTitle = "Spectra of usual pixels with their fits"
+
 // spectra draws the spectra of single pixels.
 func spectra(traces []survey.Trace) (p render.Picture, err error) {
 	f, err := render.Spectra(traces, render.Options{WidthMM: 160})
@@ -98,7 +104,7 @@ func spectra(traces []survey.Trace) (p render.Picture, err error) {
 	for _, t := range traces {
 		kinds = append(kinds, strings.ToLower(t.Title))
 	}
-	return render.Picture{Name: "spectra", Title: "Spectra of usual pixels with their fits", PNG: png.Bytes(),
+	return render.Picture{Name: "spectra", Title: spectraTitle, PNG: png.Bytes(),
 		Alt: "Spectra with fit and background of usual pixels: " + strings.Join(kinds, ", ") + "."}, nil
 }
 

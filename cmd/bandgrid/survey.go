@@ -17,8 +17,6 @@ import (
 
 	"bandgrid/fit"
 	"bandgrid/fit/calib"
-	"bandgrid/fit/carbon"
-	"bandgrid/fit/region"
 	"bandgrid/mapio"
 	"bandgrid/mapio/area"
 	"bandgrid/mapio/scan"
@@ -52,10 +50,7 @@ type surveyOptions struct {
 	printRecipe bool
 	columns     []string
 	with        string
-	spot        float64
-	film        string
-	oxide       float64
-	minArea     float64
+	meaning     meaning
 	gain        float64
 	readNoise   float64
 	instrument  float64
@@ -84,10 +79,7 @@ func (o *surveyOptions) add(fs *pflag.FlagSet) {
 	fs.StringVar(&o.with, "with", "", "second `run` over the same grid that holds the other window")
 	fs.StringVar(&o.recipe, "recipe", "", "JSON `file` with windows and bands (default: the built-in recipe for graphene)")
 	fs.BoolVar(&o.printRecipe, "print-recipe", false, "print the recipe, built-in or given, and do nothing else")
-	fs.StringVar(&o.film, "film", "unknown", "where the film comes from: `unknown`, exfoliated or grown; unknown is the cautious one")
-	fs.Float64Var(&o.oxide, "oxide", 0, "thickness of the substrate's oxide in `nm`, where known")
-	fs.Float64Var(&o.spot, "spot", 0, "laser spot's full width at half maximum in `um` (default: one step)")
-	fs.Float64Var(&o.minArea, "min-area", 0, "smallest region in `um2`; smaller specks and holes are absorbed (default: four pixels)")
+	o.meaning.add(fs)
 	fs.Float64Var(&o.gain, "gain", 0, "detector gain in `electrons` per count (default: from the scatter of the run)")
 	fs.Float64Var(&o.readNoise, "read-noise", 0, "scatter of a channel without light, in `counts`; with --gain")
 	fs.Float64Var(&o.instrument, "instrument-width", 0, "FWHM of the spectrometer's line in `cm-1`, where known: widths are then the natural ones")
@@ -117,12 +109,12 @@ func (o *surveyOptions) check(runs []string) error {
 		return errors.New("standard input has no name; say with -o where the survey goes")
 	case o.laser != 0 && !(o.laser >= 200 && o.laser <= 2000):
 		return fmt.Errorf("--laser %g: a wavelength in nm between 200 and 2000 is needed", o.laser)
-	case o.gain < 0 || o.readNoise < 0 || o.instrument < 0 || o.saturation < 0 || o.spot < 0 || o.minArea < 0 || o.oxide < 0 || o.workers < 0:
-		return errors.New("gain, read noise, instrument width, saturation, spot, oxide, area and workers cannot be negative")
+	case o.gain < 0 || o.readNoise < 0 || o.instrument < 0 || o.saturation < 0 || o.workers < 0:
+		return errors.New("gain, read noise, instrument width, saturation and workers cannot be negative")
 	case o.readNoise > 0 && o.gain == 0:
 		return errors.New("--read-noise is in counts beside shot noise, so it needs --gain")
 	}
-	return carbon.Settings{Film: o.film}.Check()
+	return o.meaning.check()
 }
 
 func (o *surveyOptions) run(ctx context.Context, runs []string, std streams) error {
@@ -304,11 +296,11 @@ func (o *surveyOptions) one(ctx context.Context, run string, recipe fit.Recipe, 
 		return errors.Join(stopped, folder.Abandon())
 	}
 	o.describe(s, inputs, broken == nil && stopped == nil)
-	if err := o.interpret(s, recipe); err != nil {
+	if err := o.meaning.apply(s, recipe); err != nil {
 		return errors.Join(err, folder.Abandon())
 	}
 	traces := fit.Examples(s, inputs.plan, inputs.sample, o.places)
-	if err := (bundle{recipe, o.table, o.workers, traces}).write(folder.Path(), s); err != nil {
+	if err := (bundle{recipe: recipe, table: o.table, workers: o.workers, traces: traces}).write(folder.Path(), s); err != nil {
 		return errors.Join(err, folder.Abandon())
 	}
 	if stopped != nil {
@@ -539,9 +531,9 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 		}
 	}
 	s.Complete = complete
-	s.Settings = map[string]any{"film": o.film}
+	s.FitWarnings = len(s.Warnings)
+	s.Settings = map[string]any{}
 	for name, v := range map[string]float64{
-		"oxide_nm": o.oxide, "spot_um": o.spot, "min_area_um2": o.minArea,
 		"gain_e_per_count": o.gain, "read_noise_counts": o.readNoise, "saturation_counts": o.saturation,
 		"instrument_width_cm-1": o.instrument, "dark_counts": o.dark,
 	} {
@@ -565,15 +557,6 @@ func (o *surveyOptions) describe(s *survey.Survey, in inputs, complete bool) {
 	s.Notes = map[string]string{}
 	maps.Copy(s.Notes, in.first.Notes)
 	maps.Copy(s.Notes, o.notes)
-}
-
-// interpret adds what follows from the bands: ratios, layer number, regions.
-func (o *surveyOptions) interpret(s *survey.Survey, recipe fit.Recipe) error {
-	steps := append(fit.RatioSteps(recipe), carbon.All(carbon.Settings{Film: o.film, Oxide: o.oxide})...)
-	if err := fit.Apply(s, steps); err != nil {
-		return err
-	}
-	return region.Find(s, region.Options{MinArea: o.minArea, Ring: o.spot})
 }
 
 // describeCalibration says in words what was corrected, and how well, for the report.

@@ -578,7 +578,7 @@ func TestHelpExamples(t *testing.T) {
 			found++
 			args := strings.Fields(text)
 			for i, a := range args {
-				if strings.HasPrefix(a, "examples/") {
+				if strings.HasPrefix(a, "examples/") || strings.HasSuffix(a, ".survey") {
 					args[i] = filepath.Join(dir, a)
 				} else if i > 0 && (args[i-1] == "-o" || args[i-1] == "--truth") {
 					args[i] = filepath.Join(dir, a)

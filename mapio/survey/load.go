@@ -17,7 +17,7 @@ const maxInfo = 16 << 20
 
 var quantityName = regexp.MustCompile(`^[a-z0-9][a-z0-9_]*$`)
 
-// Load reads a survey's numbers back. Quantities come in order of their names. The error names the file and what is wrong
+// Load reads a survey's numbers back. Quantities come in the order of regions.csv. The error names the file and what is wrong
 // with it. Regions know no cells.
 func Load(dir string) (*Survey, error) {
 	name := filepath.Join(dir, infoFile)
@@ -82,7 +82,20 @@ func Load(dir string) (*Survey, error) {
 	if s.Regions, err = readRegions(f); err != nil {
 		return nil, fmt.Errorf("%s: %w", regions, err)
 	}
+	s.order()
 	return s, nil
+}
+
+// order puts the quantities in the order in which regions.csv has them; those that it has not, which have no mean, come last.
+func (s *Survey) order() {
+	if len(s.Regions) == 0 {
+		return
+	}
+	place := map[string]int{}
+	for i, st := range s.Regions[0].Stats {
+		place[st.Quantity] = i - len(s.Regions[0].Stats)
+	}
+	slices.SortStableFunc(s.Maps, func(a, b Quantity) int { return place[a.Name] - place[b.Name] })
 }
 
 // array reads one array, which must have the grid's shape.

@@ -54,10 +54,12 @@ type Info struct {
 	Learned []Learned       `json:"learned,omitempty"` // for each of the runs
 	Drift   *Drift          `json:"drift,omitempty"`   // of the axis, where a line was followed
 	// Calibration says in words what was corrected on axis and response; empty where nothing was.
-	Calibration []string            `json:"calibration,omitempty"`
-	Settings    map[string]any      `json:"settings"` // interpretation and display settings: spot, film, minimum area ...
-	Notes       map[string]string   `json:"notes,omitempty"`
-	Warnings    []string            `json:"warnings"`
+	Calibration []string          `json:"calibration,omitempty"`
+	Settings    map[string]any    `json:"settings"` // interpretation and display settings: spot, film, minimum area ...
+	Notes       map[string]string `json:"notes,omitempty"`
+	Warnings    []string          `json:"warnings"`
+	// FitWarnings is how many of them, the first, come from reading and fitting; the others are of the interpretation.
+	FitWarnings int                 `json:"fit_warnings"`
 	Complete    bool                `json:"complete"` // false where part of the input was unusable or the run was interrupted
 	Quantities  map[string]Quantity `json:"quantities"`
 }
@@ -84,6 +86,11 @@ func (s *Survey) Map(name string) *Quantity {
 		return &s.Maps[i]
 	}
 	return nil
+}
+
+// Drop removes quantities.
+func (s *Survey) Drop(names ...string) {
+	s.Maps = slices.DeleteFunc(s.Maps, func(q Quantity) bool { return slices.Contains(names, q.Name) })
 }
 
 // Put adds a quantity, or replaces the one of its name.
