@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"sync"
 
 	"bandgrid/mapio/survey"
@@ -19,7 +20,7 @@ type Picture struct {
 	PNG   []byte
 }
 
-// Standard draws the standard set: a map and a histogram of each quantity of StandardQuantities that the survey has, and the
+// Standard draws the standard set: a map and a histogram of each quantity of StandardQuantities and, where they have values, of FurtherQuantities that the survey has, and the
 // overview of them. Figures are drawn by opt.Workers at a time; order and bytes do not depend on it.
 func Standard(s *survey.Survey, opt Options) ([]Picture, error) {
 	type job struct {
@@ -27,9 +28,9 @@ func Standard(s *survey.Survey, opt Options) ([]Picture, error) {
 		figure           func() (*plot.Figure, error)
 	}
 	var jobs []job
-	for _, name := range StandardQuantities {
+	for _, name := range slices.Concat(StandardQuantities, FurtherQuantities) {
 		q := s.Map(name)
-		if q == nil {
+		if q == nil || !slices.Contains(StandardQuantities, name) && !slices.ContainsFunc(q.Values, func(v float32) bool { return v == v }) {
 			continue
 		}
 		title := Title(q)
@@ -44,7 +45,7 @@ func Standard(s *survey.Survey, opt Options) ([]Picture, error) {
 	if s.Drift != nil {
 		jobs = append(jobs, job{"drift", "Drift of the shift axis", altDrift(s.Drift), func() (*plot.Figure, error) { return Drift(s, opt) }})
 	}
-	if len(jobs) > 0 {
+	if slices.ContainsFunc(StandardQuantities, func(name string) bool { return s.Map(name) != nil }) {
 		sheet := opt
 		sheet.WidthMM = 0
 		jobs = append(jobs, job{"overview", "Overview", "Sheet of the maps of layer number and main quantities, " + Measured(s) + ".",

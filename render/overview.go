@@ -18,6 +18,9 @@ const (
 // StandardQuantities are those that a survey is looked at by first.
 var StandardQuantities = []string{"layer_number", "d_g_ratio", "g_position", "2d_width"}
 
+// FurtherQuantities follow them in a report, but are not on the overview.
+var FurtherQuantities = []string{"strain", "hole_density"}
+
 // Overview draws a sheet of maps with letters under a line that says what was measured; a slide of 254 mm by default. Quantities
 // that the survey lacks are left out.
 func Overview(s *survey.Survey, quantities []string, opt Options) (*plot.Figure, error) {

@@ -131,7 +131,7 @@ func decompose(s *survey.Survey, p Plane) {
 		return v
 	}
 	strain := survey.Quantity{Name: "strain", Unit: "%", Description: "biaxial strain of a single layer, from G and 2D position; tension is positive", Values: empty(), SE: empty()}
-	hole := survey.Quantity{Name: "hole_density", Unit: "1e12 cm-2", Description: "density of holes in a single layer, from G and 2D position; 0 below 0.5, where G does not tell", Values: empty(), SE: empty()}
+	hole := survey.Quantity{Name: "hole_density", Unit: "10^12 cm-2", Description: "density of holes in a single layer, from G and 2D position; 0 below 0.5, where G does not tell", Values: empty(), SE: empty()}
 	outside := 0
 	for i := range n {
 		if number.Values[i] != 1 || st != nil && st.Values[i] != 1 {

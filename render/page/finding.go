@@ -45,7 +45,7 @@ func Summary(s *survey.Survey) []string {
 	}
 	for _, q := range []struct{ name, words, unit string }{
 		{"d_g_ratio", "D/G height ratio", ""}, {"g_position", "G position", " cm⁻¹"}, {"2d_width", "2D width", " cm⁻¹"},
-		{"strain", "Strain (biaxial)", " %"}, {"hole_density", "Hole density, 10¹² cm⁻²,", ""},
+		{"strain", "Strain (biaxial)", " %"}, {"hole_density", "Hole density", " × 10¹² cm⁻²"},
 	} {
 		m := s.Map(q.name)
 		if m == nil {
