@@ -49,6 +49,10 @@ const makeupDiscrepancy = 0.015
 // scale (Sociol. Methods Res. 33, 261 (2004)).
 const convincing = 10
 
+// promising is the fall of chi-square from one line to two below which four are not tried: of single layers, four in five are not
+// worth it, and of bilayers whose four lines would convince none (TestMakeup).
+const promising = 3
+
 func newMakeups(w *windowPlan) *makeups {
 	m := &makeups{band: make([]float64, len(w.x))}
 	most := 0
@@ -85,7 +89,11 @@ func (m *makeups) choose(w *window) {
 	scale := w.makeupScale()
 	best := m.tries[0]
 	var chi1, norm float64
+	hope := math.Inf(1) // what the description before has gained
 	for _, t := range m.tries {
+		if t.evidence = math.Inf(1); hope < promising {
+			continue
+		}
 		copy(t.problem.Y, w.problem.Y)
 		copy(t.problem.RootW, m.tries[0].problem.RootW)
 		t.problem.SetWeights()
@@ -96,6 +104,9 @@ func (m *makeups) choose(w *window) {
 			norm = m.norm(w, t)
 		}
 		fall := max(0, chi1-res.Sum) / scale
+		if t.n > 1 {
+			hope = fall
+		}
 		count := float64(t.problem.Len())
 		t.chi2 = res.Sum / scale * w.noise.inflation() / max(float64(points)-count, 1)
 		t.evidence = -fall/(1+makeupDiscrepancy*makeupDiscrepancy*norm/scale) + 2*count + 2*count*(count+1)/(float64(points)-count-1)

@@ -266,9 +266,9 @@ func (w *window) start(rank int, scale float64) {
 		w.sigma[i] = 1
 	}
 	w.weigh()
-	w.minimize()
+	w.minimize(linear)
 	w.reweigh()
-	w.minimize()
+	w.minimize(linear)
 	w.judge(true)
 }
 
@@ -309,7 +309,7 @@ func (w *window) refine() {
 	for round := 0; ; round++ {
 		copy(w.before, w.p)
 		w.reweigh()
-		end := w.minimize()
+		end := w.minimize(precision(round))
 		changed := w.judge(false)
 		if round > 0 && w.spikes() { // not before the strong bands are fitted
 			changed = true
@@ -360,10 +360,21 @@ func (w *window) release() {
 	}
 }
 
+// precision is how far a round is taken: the first only as far as the weights are worth it, which come from its start.
+func precision(round int) (set lsq.Settings) {
+	if round == 0 {
+		set.Tolerance = 0.03
+	}
+	return set
+}
+
+// linear is for problems of heights and background alone, which one step solves.
+var linear = lsq.Settings{Limit: 1}
+
 // minimize refines the free parameters at the present weights.
-func (w *window) minimize() lsq.End {
+func (w *window) minimize(set lsq.Settings) lsq.End {
 	w.release()
-	res := w.solver.Minimize(w.problem, w.p, w.lo, w.hi, w.free, w.points, lsq.Settings{})
+	res := w.solver.Minimize(w.problem, w.p, w.lo, w.hi, w.free, w.points, set)
 	if !w.solver.Covariance(w.cov, len(w.p)) {
 		for i := range w.cov {
 			w.cov[i] = math.Inf(1)
