@@ -26,6 +26,7 @@ type meaning struct {
 	oxide   float64
 	spot    float64
 	minArea float64
+	limits  string
 }
 
 func (m *meaning) add(fs *pflag.FlagSet) {
@@ -33,6 +34,7 @@ func (m *meaning) add(fs *pflag.FlagSet) {
 	fs.Float64Var(&m.oxide, "oxide", 0, "thickness of the substrate's oxide in `nm`, where known")
 	fs.Float64Var(&m.spot, "spot", 0, "laser spot's full width at half maximum in `um` (default: one step)")
 	fs.Float64Var(&m.minArea, "min-area", 0, "smallest region in `um2`; smaller specks and holes are absorbed (default: four pixels)")
+	fs.StringVar(&m.limits, "limits", "", "JSON `file` of limits to keep; says go or no go, and ends with status 1 at no go")
 }
 
 func (m *meaning) check() error {
@@ -59,7 +61,45 @@ func (m *meaning) apply(s *survey.Survey, recipe fit.Recipe) error {
 	if err := fit.Apply(s, append(fit.RatioSteps(recipe), steps...)); err != nil {
 		return err
 	}
-	return region.Find(s, region.Options{MinArea: m.minArea, Ring: m.spot})
+	if err := region.Find(s, region.Options{MinArea: m.minArea, Ring: m.spot}); err != nil {
+		return err
+	}
+	s.Verdicts = nil
+	limits, err := m.readLimits()
+	if err != nil || limits == nil {
+		return err
+	}
+	if s.Verdicts, err = region.Judge(s, limits); err != nil {
+		return fmt.Errorf("%s: %w", m.limits, err)
+	}
+	return nil
+}
+
+// readLimits returns the limits to keep, nil where none are asked for.
+func (m *meaning) readLimits() ([]region.Limit, error) {
+	if m.limits == "" {
+		return nil, nil
+	}
+	f, err := os.Open(m.limits)
+	if err != nil {
+		return nil, err
+	}
+	defer f.Close()
+	limits, err := region.ReadLimits(f)
+	if err != nil {
+		return nil, fmt.Errorf("%s: %w", m.limits, err)
+	}
+	return limits, nil
+}
+
+// verdict returns an error where a limit is not kept.
+func verdict(s *survey.Survey) error {
+	for _, v := range s.Verdicts {
+		if !v.Go {
+			return fmt.Errorf("%w: %s is %.4g ± %.2g, %s is wanted", errNoGo, v.What, v.Value, v.SE, v.Limit)
+		}
+	}
+	return nil
 }
 
 var interpretVerb = verb{
@@ -112,6 +152,9 @@ func (o *interpretOptions) run(_ context.Context, args []string, std streams) er
 	if err := o.meaning.check(); err != nil {
 		return usageError{err}
 	}
+	if _, err := o.meaning.readLimits(); err != nil {
+		return err
+	}
 	from := filepath.Clean(args[0])
 	s, err := survey.Load(from)
 	if err != nil {
@@ -152,7 +195,7 @@ func (o *interpretOptions) run(_ context.Context, args []string, std streams) er
 	if !o.quiet {
 		summary(std.out, s, out, time.Since(start))
 	}
-	return nil
+	return verdict(s)
 }
 
 // keep takes over what the survey was interpreted with where no flag says otherwise.

@@ -78,3 +78,34 @@ func TestInterpretRefuses(t *testing.T) {
 		t.Errorf("left behind: %v", left)
 	}
 }
+
+// TestLimits: go and no go, in words, in survey.json and in the exit status; the survey is there either way.
+func TestLimits(t *testing.T) {
+	t.Parallel()
+	dir := t.TempDir()
+	run := save(t, filepath.Join(dir, "night.txt"), flakeNight(t, "raster").text(t, table.Style{}))
+	easy := save(t, filepath.Join(dir, "easy.json"), []byte(`{"limits": [{"quantity": "area", "layer": 1, "at_least": 3}, {"quantity": "d_g_ratio", "layer": 1, "at_most": 0.8}]}`))
+	hard := save(t, filepath.Join(dir, "hard.json"), []byte(`{"limits": [{"quantity": "area", "layer": 1, "at_least": 3}, {"quantity": "d_g_ratio", "layer": 1, "at_most": 0.05}]}`))
+	wrong := save(t, filepath.Join(dir, "wrong.json"), []byte(`{"limits": [{"quantity": "area"}]}`))
+	made := filepath.Join(dir, "a.survey")
+	if code, out, log := command("survey", run, "-o", made, "--limits", easy); code != exitDone || strings.Count(out, "Go: ") != 2 {
+		t.Errorf("exit %d: %s%s", code, out, log)
+	}
+	b := filepath.Join(dir, "b.survey")
+	code, out, log := command("interpret", made, "-o", b, "--limits", hard)
+	if code != exitFailed || !strings.Contains(out, "No go: median d_g_ratio of 1 layer") || !strings.Contains(log, "at most 0.05 is wanted") {
+		t.Errorf("exit %d: %s%s", code, out, log)
+	}
+	s := load(t, b)
+	if len(s.Verdicts) != 2 || !s.Verdicts[0].Go || s.Verdicts[1].Go || !(s.Verdicts[1].Margin < -3) {
+		t.Errorf("%+v", s.Verdicts)
+	}
+	for _, verb := range [][]string{{"survey", run, "-o", filepath.Join(dir, "c")}, {"interpret", made, "-o", filepath.Join(dir, "c")}} {
+		if code, _, log := command(append(verb, "--limits", wrong)...); code != exitFailed || !strings.Contains(log, "wrong.json") {
+			t.Errorf("%q: exit %d: %s", verb, code, log)
+		}
+		if _, err := os.Stat(filepath.Join(dir, "c")); err == nil {
+			t.Errorf("%q: a survey is there", verb)
+		}
+	}
+}

@@ -49,6 +49,9 @@ func (e usageError) Unwrap() error { return e.error }
 // errPartly is wrapped by errors of verbs that did their work but could not use all of the input.
 var errPartly = errors.New("part of the input was unusable")
 
+// errNoGo is wrapped where a limit that was given is not kept; what was asked for is done all the same.
+var errNoGo = errors.New("no go")
+
 func main() {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	defer stop()
@@ -71,7 +74,7 @@ func run(ctx context.Context, args []string, std streams) int {
 	if errors.As(err, new(usageError)) {
 		return exitUsage
 	}
-	if errors.Is(err, errPartly) {
+	if errors.Is(err, errPartly) && !errors.Is(err, errNoGo) {
 		return exitPartly
 	}
 	return exitFailed

@@ -178,6 +178,9 @@ func (o *surveyOptions) place() error {
 	if err := o.readCalibration(); err != nil {
 		return err
 	}
+	if _, err := o.meaning.readLimits(); err != nil { // before hours of work
+		return err
+	}
 	if o.exclude == "" {
 		return nil
 	}
@@ -313,9 +316,9 @@ func (o *surveyOptions) one(ctx context.Context, run string, recipe fit.Recipe, 
 		summary(std.out, s, o.folder(run), time.Since(start))
 	}
 	if broken != nil {
-		return fmt.Errorf("%w: %w; the survey in %s says what is missing", errPartly, broken, o.folder(run))
+		broken = fmt.Errorf("%w: %w; the survey in %s says what is missing", errPartly, broken, o.folder(run))
 	}
-	return nil
+	return errors.Join(verdict(s), broken)
 }
 
 // inputs are the runs of one survey, opened, with the plans to fit them by. The second is there only with --with.

@@ -58,6 +58,7 @@ type Info struct {
 	Settings    map[string]any    `json:"settings"` // interpretation and display settings: spot, film, minimum area ...
 	Notes       map[string]string `json:"notes,omitempty"`
 	Warnings    []string          `json:"warnings"`
+	Verdicts    []Verdict         `json:"verdicts,omitempty"` // on the limits that were given
 	// FitWarnings is how many of them, the first, come from reading and fitting; the others are of the interpretation.
 	FitWarnings int                 `json:"fit_warnings"`
 	Complete    bool                `json:"complete"` // false where part of the input was unusable or the run was interrupted

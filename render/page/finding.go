@@ -34,7 +34,7 @@ func LayerName(n float64) string {
 // Summary says in sentences what was found: areas by layer number, then the median D/G of single layers, G position and 2D
 // width. The command prints it and the report opens with it.
 func Summary(s *survey.Survey) []string {
-	var list []string
+	list := verdicts(s)
 	number := s.Map("layer_number")
 	if number != nil {
 		list = append(list, layerSentences(s, number)...)
@@ -56,6 +56,22 @@ func Summary(s *survey.Survey) []string {
 		}
 	}
 	return append(list, damage(s)...)
+}
+
+// verdicts say whether the limits that were given are kept.
+func verdicts(s *survey.Survey) (list []string) {
+	for _, v := range s.Verdicts {
+		word := "Go"
+		if !v.Go {
+			word = "No go"
+		}
+		text := fmt.Sprintf("%s: %s is %s ± %s, %s is wanted", word, v.What, significant(v.Value), significant(v.SE), v.Limit)
+		if v.SE > 0 {
+			text += fmt.Sprintf(" (margin %+.1f standard errors)", v.Margin)
+		}
+		list = append(list, text+".")
+	}
+	return list
 }
 
 // damage says how many defects the single layers have, where that can be told.
