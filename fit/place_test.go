@@ -1,6 +1,7 @@
 package fit_test
 
 import (
+	"strings"
 	"testing"
 
 	"bandgrid/fit"
@@ -39,18 +40,18 @@ func picture(s *survey.Survey) (rows []string) {
 	q := s.Map("2d_position").Values
 	status := s.Map("status").Values
 	for row := s.Grid.Rows - 1; row >= 0; row-- {
-		line := ""
+		var line strings.Builder
 		for col := range s.Grid.Cols {
 			switch i := row*s.Grid.Cols + col; {
 			case status[i] != status[i]:
-				line += " "
+				line.WriteString(" ")
 			case q[i] == q[i]:
-				line += "1"
+				line.WriteString("1")
 			default:
-				line += "."
+				line.WriteString(".")
 			}
 		}
-		rows = append(rows, line)
+		rows = append(rows, line.String())
 	}
 	return rows
 }

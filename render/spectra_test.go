@@ -35,10 +35,10 @@ func TestSpectra(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		all := ""
+		var all strings.Builder
 		texts := f.Texts()
 		for i, a := range texts {
-			all += a.String + "\n"
+			all.WriteString(a.String + "\n")
 			box := a.Box()
 			if box.X < 0 || box.Y < 0 || box.X+box.W > f.W || box.Y+box.H > f.H {
 				t.Errorf("%g mm: %q lies outside the figure", width, a.String)
@@ -50,7 +50,7 @@ func TestSpectra(t *testing.T) {
 			}
 		}
 		for _, want := range []string{"Single layer, x 10.25", "With a cosmic ray, x 1234.50", "Raman shift", "Counts", "G", "2D"} {
-			if !strings.Contains(all, want) {
+			if !strings.Contains(all.String(), want) {
 				t.Errorf("%g mm: %q is missing", width, want)
 			}
 		}

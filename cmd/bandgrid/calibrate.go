@@ -250,7 +250,7 @@ func describeResponse(w io.Writer, r *calib.Response) {
 func wrapped(list string) string {
 	var b strings.Builder
 	n := 12
-	for _, word := range strings.Fields(list) {
+	for word := range strings.FieldsSeq(list) {
 		if n+len(word) > 95 {
 			b.WriteString("\n  ")
 			n = 2

@@ -79,7 +79,7 @@ func Read(r io.Reader) (shape []int, data []float32, err error) {
 		return nil, nil, errors.New("the header has no shape")
 	}
 	n := 1
-	for _, d := range strings.Split(find(shapes), ",") {
+	for d := range strings.SplitSeq(find(shapes), ",") {
 		if d = strings.TrimSpace(d); d == "" {
 			continue
 		}
