@@ -51,7 +51,8 @@ type Background struct {
 // NewBackground returns one for spectra of n channels, spacing cm-1 apart.
 func NewBackground(set Baseline, n int, spacing float64) *Background {
 	if set.Stiffness == 0 {
-		if set.Stiffness = 500; set.Method == "als" {
+		set.Stiffness = 500
+		if set.Method == "als" {
 			set.Stiffness = 800
 		}
 	}
@@ -84,13 +85,35 @@ func (b *Background) Estimate(z, y []float64, skip []bool) {
 	}
 }
 
-// smooth stores in z the smooth curve nearest to y with the weights w.
+// smooth stores in z the smooth curve nearest to y with the weights w. It is solved for what is left of a weighted straight line,
+// which the penalty does not see: so the matrix's ridge draws to that line and not to zero.
 func (b *Background) smooth(z, y []float64) {
 	b.band.fill(b.w, b.lambda)
+	var s, sx, sy, sxx, sxy float64
+	middle := float64(len(y)-1) / 2
 	for i, w := range b.w {
-		z[i] = w * y[i]
+		if w > 0 {
+			x := float64(i) - middle
+			s, sx, sy, sxx, sxy = s+w, sx+w*x, sy+w*y[i], sxx+w*x*x, sxy+w*x*y[i]
+		}
+	}
+	var level, slope float64
+	if s > 0 {
+		if det := sxx - sx*sx/s; det > 1e-9*sxx {
+			slope = (sxy - sx*sy/s) / det
+		}
+		level = (sy - slope*sx) / s
+	}
+	for i, w := range b.w {
+		z[i] = 0
+		if w > 0 {
+			z[i] = w * (y[i] - level - slope*(float64(i)-middle))
+		}
 	}
 	b.band.solve(z)
+	for i := range z {
+		z[i] += level + slope*(float64(i)-middle)
+	}
 }
 
 func (b *Background) start(skip []bool) {
@@ -193,8 +216,17 @@ func (b *Background) clip(z, y []float64, skip []bool) {
 		b.v[i] = sum / float64(high-low)
 		floor = min(floor, b.v[i])
 	}
+	// The scale is no straight line: the mean is set to a fixed value, or the result would depend on the unit of counts.
+	mean := 0.0
+	for _, v := range b.v {
+		mean += (v - floor) / float64(n)
+	}
+	unit := 1.0
+	if mean > 0 {
+		unit = mean / 2000
+	}
 	for i, v := range b.v {
-		b.v[i] = math.Log(math.Log(math.Sqrt(v-floor+1)+1) + 1)
+		b.v[i] = math.Log(math.Log(math.Sqrt((v-floor)/unit+1)+1) + 1)
 	}
 	for p := b.reach; p >= 1; p-- {
 		copy(b.u, b.v)
@@ -211,9 +243,13 @@ func (b *Background) clip(z, y []float64, skip []bool) {
 	}
 	for i, v := range b.v {
 		e := math.Exp(math.Exp(v)-1) - 1
-		z[i] = e*e - 1 + floor
+		z[i] = (e*e-1)*unit + floor
 	}
 }
+
+// ridge keeps the matrix positive definite where hardly a channel counts: some 50 times the rounding of its elements, and far
+// below the least weight of als at any usual stiffness.
+const ridge = 1e-14
 
 // A pentadiagonal is a symmetric positive definite matrix W + λ D'D, D second differences, factored as L diag(d) L'.
 type pentadiagonal struct{ d, a, b []float64 } // diagonal, first and second below it
@@ -227,7 +263,7 @@ func (m pentadiagonal) fill(w []float64, lambda float64) {
 	n := len(w)
 	for i := range n {
 		// Rows of D that hold channel i: as first (1), middle (-2) and last (1).
-		m.d[i], m.a[i], m.b[i] = w[i]+1e-12*(1+lambda), 0, 0
+		m.d[i], m.a[i], m.b[i] = w[i]+ridge*(1+lambda), 0, 0
 		first, middle, last := i+2 < n, i >= 1 && i+1 < n, i >= 2
 		if first {
 			m.d[i] += lambda

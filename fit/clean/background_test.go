@@ -13,7 +13,7 @@ func dense(w []float64, lambda float64) *mat.SymDense {
 	n := len(w)
 	m := mat.NewSymDense(n, nil)
 	for i, v := range w {
-		m.SetSym(i, i, v+1e-12*(1+lambda))
+		m.SetSym(i, i, v+ridge*(1+lambda))
 	}
 	for r := range n - 2 {
 		row := [3]float64{1, -2, 1}
@@ -107,6 +107,33 @@ func TestBackgrounds(t *testing.T) {
 		}
 		if got := testing.AllocsPerRun(3, func() { b.Estimate(z, y, skip) }); got != 0 {
 			t.Errorf("%s: %g allocations per spectrum", set.Method, got)
+		}
+	}
+}
+
+// TestBackgroundScaleAndOffset: the unit of counts and a level added to all do not matter, also for very stiff curves.
+func TestBackgroundScaleAndOffset(t *testing.T) {
+	const n = 1000
+	y, z, other, got, skip := make([]float64, n), make([]float64, n), make([]float64, n), make([]float64, n), make([]bool, n)
+	r := rand.New(rand.NewPCG(4, 1))
+	for i := range y {
+		y[i] = 1000 + 500*math.Sin(float64(i)/200) + 300/(1+math.Pow(float64(i-500)/10, 2)) + 20*r.NormFloat64()
+	}
+	for _, set := range []Baseline{{Method: "als"}, {Method: "arpls"}, {Method: "snip"}, {Method: "als", Stiffness: 1100}, {Method: "arpls", Stiffness: 1100}} {
+		b := NewBackground(set, n, 1)
+		b.Estimate(z, y, skip)
+		for _, by := range [][2]float64{{1e-3, 0}, {1e3, 0}, {1, 1e5}} {
+			for i := range y {
+				other[i] = by[0]*y[i] + by[1]
+			}
+			b.Estimate(got, other, skip)
+			for i := range z {
+				// The equations' condition, up to 1e13 where als weighs 0.001, times rounding, against counts of 1e5: under a hundredth of
+				// the noise, 0.2.
+				if d := (got[i]-by[1])/by[0] - z[i]; !(math.Abs(d) <= 0.2) {
+					t.Fatalf("%+v, times %g plus %g: channel %d is off by %g", set, by[0], by[1], i, d)
+				}
+			}
 		}
 	}
 }
