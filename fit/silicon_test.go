@@ -59,8 +59,10 @@ func TestSiliconLineIsNeverASpike(t *testing.T) {
 		if lost > 0 || touched > 0 || n < 800 {
 			t.Errorf("spacing %g: line lost in %.0f of %.0f pixels, channels left out without a ray in %.0f", spacing, lost, n+lost, touched)
 		}
-		// What the other pixels show tells a ray on the line from the line. (Without them one in twelve misleads at 2 cm-1 per channel.)
-		if !(misled <= 0.02*hit) || hit < 50 {
+		// What the other pixels show tells a ray on the line from the line. Over ten other seeds 12 of 1131 rays misled at 2 cm-1 per
+		// channel, none at the others; so one is due in some hundred, and five are four deviations more. (Without the other pixels
+		// one in twelve misleads.)
+		if !(misled <= 5) || hit < 50 {
 			t.Errorf("spacing %g: %.0f of %.0f rays near the line mislead the fit", spacing, misled, hit)
 		}
 		// The model is the profile at the middle of a channel, as the simulation's: real channels integrate.
