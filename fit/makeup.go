@@ -45,9 +45,9 @@ type try struct {
 // Lett. 9, 346 (2009)) and that of the four lines of a bilayer.
 const makeupDiscrepancy = 0.015
 
-// convincing is the AICc difference from which the simpler description has essentially no support on the published
-// scale (Sociol. Methods Res. 33, 261 (2004)).
-const convincing = 10
+// convincing is the AICc difference from which the simpler description has little support, 4 to 7 "considerably less" on the
+// published scale (Sociol. Methods Res. 33, 261 (2004)).
+const convincing = 7
 
 // promising is the fall of chi-square from one line to two below which four are not tried: of single layers, four in five are not
 // worth it, and of bilayers whose four lines would convince none (TestMakeup).
